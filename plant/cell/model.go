@@ -1,0 +1,264 @@
+package cell
+
+import (
+	"fmt"
+	"math"
+	"sort"
+)
+
+// Options are how a cell is compiled into a Model.
+type Options struct {
+	PeriodS float64 // the usual step, s, > 0: decay factors for it are made ready; 0: none
+	// Branches to keep, the slowest ones (by time constant at SOC 0.5 and
+	// TemperatureRefC); the others' resistance is added to R0. Negative: all.
+	Branches int
+	// Isothermal collapses every table to TemperatureC, which then never changes.
+	Isothermal   bool
+	TemperatureC float64
+
+	OCVOffsetV     float64
+	R0Scale        float64 // > 0 or 0
+	BranchRScale   float64 // ≥ 0; leaves time constants alone
+	BranchTauScale float64 // > 0
+}
+
+// AsBuilt returns the options of a cell as its definition says, at every
+// temperature, to be stepped by periodS.
+func AsBuilt(periodS float64) Options {
+	return Options{PeriodS: periodS, Branches: -1, R0Scale: 1, BranchRScale: 1, BranchTauScale: 1}
+}
+
+// Segment is one interval of SOC, [Lo, Hi), on which every table is a
+// polynomial in t = SOC - Ref.
+type Segment struct {
+	Lo, Hi, Ref float64
+	OCV         Cubic              // V
+	R0          Cubic              // Ω
+	R           [MaxBranches]Cubic // Ω
+	HalfGapV    Cubic
+	Tau         [MaxBranches]Cubic // s; F where the time constant is R·C
+}
+
+// Model is a cell made ready to be stepped. It is read-only once compiled; any
+// number of Views may share it.
+type Model struct {
+	Cell       *Cell
+	N          int     // branches
+	CapacityAh float64 // nameplate
+	Efficiency float64 // coulombic, on charge
+	Hysteretic bool
+	Rate       float64 // hysteresis
+	PeriodS    float64 // the usual step
+
+	// TauFixed says that branch j's time constant is the same everywhere; then
+	// TauS[j], and for a step of PeriodS Decay[j] = exp(-dt/tau) and
+	// Rise[j] = 1 - Decay[j], are ready.
+	TauFixed    [MaxBranches]bool
+	AllTauFixed bool
+	TauS        [MaxBranches]float64
+	Decay       [MaxBranches]float64
+	Rise        [MaxBranches]float64
+
+	farad  [MaxBranches]bool // Tau holds a capacitance, to be multiplied by R
+	rOverR float64           // R as defined over R as scaled, for R·C
+	temps  []float64         // layers; empty: one layer for every temperature
+	layers [][]Segment
+	ocvByT bool
+}
+
+// Compile makes c ready. It returns c.Validate's error, or one for an option
+// out of range.
+func Compile(c *Cell, o Options) (*Model, error) {
+	if err := c.Validate(); err != nil {
+		return nil, err
+	}
+	if err := o.validate(c); err != nil {
+		return nil, err
+	}
+	m := &Model{Cell: c, CapacityAh: c.CapacityAh, Efficiency: c.CoulombicEfficiency, PeriodS: o.PeriodS}
+	if h := c.Hysteresis; h != nil {
+		m.Hysteretic, m.Rate = true, h.Rate
+	}
+	s := surfacesOf(c)
+	keep, fold := s.split(c, o.Branches)
+	m.N = len(keep)
+	m.layOut(c, &s, keep, fold, o)
+	m.fixTaus(c, keep, o)
+	return m, nil
+}
+
+func (o *Options) validate(c *Cell) error {
+	switch {
+	case !(o.PeriodS >= 0) || math.IsInf(o.PeriodS, 0):
+		return fmt.Errorf("cell: period is %g s, allowed is a finite number ≥ 0", o.PeriodS)
+	case o.Branches > len(c.Branches):
+		return fmt.Errorf("cell: %d branches asked of %s, which has %d", o.Branches, c.Name, len(c.Branches))
+	case o.Isothermal && !(o.TemperatureC > absoluteZeroC && finite(o.TemperatureC)):
+		return fmt.Errorf("cell: temperature is %g °C, allowed is a finite number > -273.15", o.TemperatureC)
+	case !finite(o.OCVOffsetV):
+		return fmt.Errorf("cell: ocv_offset_v is %g, allowed is a finite number", o.OCVOffsetV)
+	case !(o.R0Scale >= 0) || math.IsInf(o.R0Scale, 0):
+		return fmt.Errorf("cell: r0_scale is %g, allowed is a finite number ≥ 0", o.R0Scale)
+	case !(o.BranchRScale >= 0) || math.IsInf(o.BranchRScale, 0):
+		return fmt.Errorf("cell: branch_r_scale is %g, allowed is a finite number ≥ 0", o.BranchRScale)
+	case !(o.BranchTauScale > 0) || math.IsInf(o.BranchTauScale, 0):
+		return fmt.Errorf("cell: branch_tau_scale is %g, allowed is a finite number > 0", o.BranchTauScale)
+	}
+	return nil
+}
+
+// surfaces are all tables of a cell, made ready.
+type surfaces struct {
+	ocv, r0, gap surface
+	slope        *surface
+	r, tau       []surface
+}
+
+func surfacesOf(c *Cell) surfaces {
+	s := surfaces{ocv: newSurface(&c.OCV, c.Interpolation, true), r0: newSurface(&c.R0, c.Interpolation, false)}
+	if c.OCVSlopeVPerK != nil {
+		t := newSurface(c.OCVSlopeVPerK, c.Interpolation, false)
+		s.slope = &t
+	}
+	zero := Constant(0)
+	s.gap = newSurface(&zero, c.Interpolation, false)
+	if c.Hysteresis != nil {
+		s.gap = newSurface(&c.Hysteresis.HalfGapV, c.Interpolation, false)
+	}
+	for j := range c.Branches {
+		b := &c.Branches[j]
+		s.r = append(s.r, newSurface(&b.Ohm, c.Interpolation, false))
+		t := b.TauS
+		if t == nil {
+			t = b.Farad
+		}
+		s.tau = append(s.tau, newSurface(t, c.Interpolation, false))
+	}
+	return s
+}
+
+// split returns the branches to keep, in the cell's order, and the others.
+func (s *surfaces) split(c *Cell, n int) (keep, fold []int) {
+	order := make([]int, len(c.Branches))
+	tau := make([]float64, len(order))
+	for j := range order {
+		order[j] = j
+		q := s.tau[j].on(0.5, above(0.5), 0.5, c.TemperatureRefC)
+		tau[j] = q.Y
+		if c.Branches[j].Farad != nil {
+			r := s.r[j].on(0.5, above(0.5), 0.5, c.TemperatureRefC)
+			tau[j] *= r.Y
+		}
+	}
+	if n < 0 || n >= len(order) {
+		return order, nil
+	}
+	sort.SliceStable(order, func(a, b int) bool { return tau[order[a]] > tau[order[b]] })
+	keep, fold = order[:n:n], order[n:]
+	sort.Ints(keep)
+	return keep, fold
+}
+
+// layOut joins all tables on one SOC axis, for each temperature where one of
+// them bends.
+func (m *Model) layOut(c *Cell, s *surfaces, keep, fold []int, o Options) {
+	all := []*surface{&s.ocv, &s.r0, &s.gap}
+	if s.slope != nil {
+		all = append(all, s.slope)
+	}
+	for j := range s.r {
+		all = append(all, &s.r[j], &s.tau[j])
+	}
+	var knots, temps []float64
+	for _, f := range all {
+		knots = f.knots(knots)
+		temps = append(temps, f.temps...)
+	}
+	knots, temps = union(knots), union(temps)
+	m.ocvByT = len(s.ocv.temps) > 0 || s.slope != nil
+	if len(temps) < 2 && s.slope != nil { // linear in temperature: any two will do
+		temps = []float64{c.TemperatureRefC, c.TemperatureRefC + 1}
+	}
+	if o.Isothermal || len(temps) == 0 {
+		at := o.TemperatureC
+		if !o.Isothermal {
+			at = c.TemperatureRefC
+		}
+		m.layers = [][]Segment{nil}
+		temps = []float64{at}
+	} else {
+		m.temps = temps
+		m.layers = make([][]Segment, len(temps))
+	}
+	n := len(knots)
+	for l, at := range temps {
+		segs := make([]Segment, n+1)
+		for k := range segs {
+			lo, hi, ref := math.Inf(-1), math.Inf(1), knots[0]
+			if k > 0 {
+				lo, ref = knots[k-1], knots[k-1]
+			}
+			if k < n {
+				hi = knots[k]
+			}
+			segs[k] = s.segment(c, lo, hi, ref, at, keep, fold, o)
+		}
+		m.layers[l] = segs
+	}
+	m.rOverR = 1
+	if o.BranchRScale > 0 {
+		m.rOverR = 1 / o.BranchRScale
+	}
+}
+
+func (s *surfaces) segment(c *Cell, lo, hi, ref, at float64, keep, fold []int, o Options) Segment {
+	g := Segment{Lo: lo, Hi: hi, Ref: ref}
+	g.OCV = s.ocv.on(lo, hi, ref, at)
+	if s.slope != nil {
+		g.OCV = g.OCV.plus(s.slope.on(lo, hi, ref, at).scaled(at - c.TemperatureRefC))
+	}
+	g.OCV.Y += o.OCVOffsetV
+	g.R0 = s.r0.on(lo, hi, ref, at).scaled(o.R0Scale)
+	for _, j := range fold {
+		g.R0 = g.R0.plus(s.r[j].on(lo, hi, ref, at).scaled(o.BranchRScale))
+	}
+	for i, j := range keep {
+		g.R[i] = s.r[j].on(lo, hi, ref, at).scaled(o.BranchRScale)
+		g.Tau[i] = s.tau[j].on(lo, hi, ref, at).scaled(o.BranchTauScale)
+	}
+	g.HalfGapV = s.gap.on(lo, hi, ref, at)
+	return g
+}
+
+// fixTaus finds the time constants that are the same everywhere.
+func (m *Model) fixTaus(c *Cell, keep []int, o Options) {
+	m.AllTauFixed = true
+	for i, j := range keep {
+		b := &c.Branches[j]
+		m.farad[i] = b.Farad != nil
+		first := m.layers[0][0].Tau[i]
+		fixed := !m.farad[i]
+		for _, segs := range m.layers {
+			for k := range segs {
+				fixed = fixed && segs[k].Tau[i] == Cubic{Y: first.Y}
+			}
+		}
+		if !fixed {
+			m.AllTauFixed = false
+			continue
+		}
+		m.TauFixed[i] = true
+		m.TauS[i] = first.Y
+		m.Decay[i], m.Rise[i] = Decay(o.PeriodS, first.Y)
+	}
+}
+
+// Decay returns exp(-dtS/tauS) and one minus it, the latter without losing
+// digits where dtS is short.
+func Decay(dtS, tauS float64) (decay, rise float64) {
+	return math.Exp(-dtS / tauS), -math.Expm1(-dtS / tauS)
+}
+
+// TemperatureMatters reports whether any table of the model depends on
+// temperature.
+func (m *Model) TemperatureMatters() bool { return len(m.temps) > 0 }
