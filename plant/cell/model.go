@@ -66,23 +66,58 @@ type Model struct {
 	ocvByT bool
 }
 
-// Compile makes c ready. It returns c.Validate's error, or one for an option
-// out of range.
-func Compile(c *Cell, o Options) (*Model, error) {
+// Prepared is a checked cell with its tables joined into polynomials, from
+// which Models for many scenarios are cut cheaply. It is read-only.
+type Prepared struct {
+	Cell  *Cell
+	s     surfaces
+	knots []float64
+	temps []float64 // where a table bends over temperature
+	byT   bool      // the OCV depends on temperature
+}
+
+// Prepare checks c and joins its tables. The error is c.Validate's.
+func Prepare(c *Cell) (*Prepared, error) {
 	if err := c.Validate(); err != nil {
 		return nil, err
 	}
+	p := &Prepared{Cell: c, s: surfacesOf(c)}
+	for _, f := range p.s.all() {
+		p.knots = f.knots(p.knots)
+		p.temps = append(p.temps, f.temps...)
+	}
+	p.knots, p.temps = union(p.knots), union(p.temps)
+	p.byT = len(p.s.ocv.temps) > 0 || p.s.slope != nil
+	if len(p.temps) < 2 && p.s.slope != nil { // linear in temperature: any two will do
+		p.temps = []float64{c.TemperatureRefC, c.TemperatureRefC + 1}
+	}
+	return p, nil
+}
+
+// Compile makes c ready. It returns c.Validate's error, or one for an option
+// out of range.
+func Compile(c *Cell, o Options) (*Model, error) {
+	p, err := Prepare(c)
+	if err != nil {
+		return nil, err
+	}
+	return p.Model(o)
+}
+
+// Model cuts the model for one set of options. It returns an error for an
+// option out of range.
+func (p *Prepared) Model(o Options) (*Model, error) {
+	c := p.Cell
 	if err := o.validate(c); err != nil {
 		return nil, err
 	}
-	m := &Model{Cell: c, CapacityAh: c.CapacityAh, Efficiency: c.CoulombicEfficiency, PeriodS: o.PeriodS}
+	m := &Model{Cell: c, CapacityAh: c.CapacityAh, Efficiency: c.CoulombicEfficiency, PeriodS: o.PeriodS, ocvByT: p.byT}
 	if h := c.Hysteresis; h != nil {
 		m.Hysteretic, m.Rate = true, h.Rate
 	}
-	s := surfacesOf(c)
-	keep, fold := s.split(c, o.Branches)
+	keep, fold := p.s.split(c, o.Branches)
 	m.N = len(keep)
-	m.layOut(c, &s, keep, fold, o)
+	m.layOut(p, keep, fold, o)
 	m.fixTaus(c, keep, o)
 	return m, nil
 }
@@ -159,9 +194,7 @@ func (s *surfaces) split(c *Cell, n int) (keep, fold []int) {
 	return keep, fold
 }
 
-// layOut joins all tables on one SOC axis, for each temperature where one of
-// them bends.
-func (m *Model) layOut(c *Cell, s *surfaces, keep, fold []int, o Options) {
+func (s *surfaces) all() []*surface {
 	all := []*surface{&s.ocv, &s.r0, &s.gap}
 	if s.slope != nil {
 		all = append(all, s.slope)
@@ -169,39 +202,34 @@ func (m *Model) layOut(c *Cell, s *surfaces, keep, fold []int, o Options) {
 	for j := range s.r {
 		all = append(all, &s.r[j], &s.tau[j])
 	}
-	var knots, temps []float64
-	for _, f := range all {
-		knots = f.knots(knots)
-		temps = append(temps, f.temps...)
-	}
-	knots, temps = union(knots), union(temps)
-	m.ocvByT = len(s.ocv.temps) > 0 || s.slope != nil
-	if len(temps) < 2 && s.slope != nil { // linear in temperature: any two will do
-		temps = []float64{c.TemperatureRefC, c.TemperatureRefC + 1}
-	}
-	if o.Isothermal || len(temps) == 0 {
-		at := o.TemperatureC
-		if !o.Isothermal {
-			at = c.TemperatureRefC
-		}
-		m.layers = [][]Segment{nil}
-		temps = []float64{at}
-	} else {
+	return all
+}
+
+// layOut cuts one layer of segments for each temperature where a table bends.
+func (m *Model) layOut(p *Prepared, keep, fold []int, o Options) {
+	temps := p.temps
+	switch {
+	case o.Isothermal:
+		temps = []float64{o.TemperatureC}
+	case len(temps) == 0:
+		temps = []float64{p.Cell.TemperatureRefC}
+	default:
 		m.temps = temps
-		m.layers = make([][]Segment, len(temps))
 	}
-	n := len(knots)
+	m.layers = make([][]Segment, len(temps))
+	n := len(p.knots)
+	back := make([]Segment, len(temps)*(n+1))
 	for l, at := range temps {
-		segs := make([]Segment, n+1)
+		segs := back[l*(n+1) : (l+1)*(n+1) : (l+1)*(n+1)]
 		for k := range segs {
-			lo, hi, ref := math.Inf(-1), math.Inf(1), knots[0]
+			lo, hi, ref := math.Inf(-1), math.Inf(1), p.knots[0]
 			if k > 0 {
-				lo, ref = knots[k-1], knots[k-1]
+				lo, ref = p.knots[k-1], p.knots[k-1]
 			}
 			if k < n {
-				hi = knots[k]
+				hi = p.knots[k]
 			}
-			segs[k] = s.segment(c, lo, hi, ref, at, keep, fold, o)
+			p.s.segment(&segs[k], p.Cell, lo, hi, ref, at, keep, fold, o)
 		}
 		m.layers[l] = segs
 	}
@@ -211,8 +239,8 @@ func (m *Model) layOut(c *Cell, s *surfaces, keep, fold []int, o Options) {
 	}
 }
 
-func (s *surfaces) segment(c *Cell, lo, hi, ref, at float64, keep, fold []int, o Options) Segment {
-	g := Segment{Lo: lo, Hi: hi, Ref: ref}
+func (s *surfaces) segment(g *Segment, c *Cell, lo, hi, ref, at float64, keep, fold []int, o Options) {
+	g.Lo, g.Hi, g.Ref = lo, hi, ref
 	g.OCV = s.ocv.on(lo, hi, ref, at)
 	if s.slope != nil {
 		g.OCV = g.OCV.plus(s.slope.on(lo, hi, ref, at).scaled(at - c.TemperatureRefC))
@@ -227,7 +255,6 @@ func (s *surfaces) segment(c *Cell, lo, hi, ref, at float64, keep, fold []int, o
 		g.Tau[i] = s.tau[j].on(lo, hi, ref, at).scaled(o.BranchTauScale)
 	}
 	g.HalfGapV = s.gap.on(lo, hi, ref, at)
-	return g
 }
 
 // fixTaus finds the time constants that are the same everywhere.
