@@ -1,0 +1,78 @@
+package noise
+
+import (
+	"fmt"
+	"math"
+
+	"soctrial/plant/record"
+)
+
+// Validate returns an error for the first value out of range, by its key in a
+// sensors file, with what was found and what is allowed.
+func (s *Sensors) Validate() error {
+	if !(s.SamplePeriodS > 0) || math.IsInf(s.SamplePeriodS, 0) {
+		return fmt.Errorf("sample_period_s: %v, allowed is > 0 and finite", s.SamplePeriodS)
+	}
+	for _, ch := range []struct {
+		name, unit string
+		set        *Channel
+	}{
+		{"current", "a", &s.Current}, {"voltage", "v", &s.Voltage}, {"temperature", "c", &s.Temperature},
+	} {
+		if err := ch.set.validate(ch.name, ch.unit); err != nil {
+			return err
+		}
+	}
+	switch s.CurrentReading {
+	case "", record.Instant, record.IntervalMean:
+		return nil
+	}
+	return fmt.Errorf("current.reading: %q, allowed is %q or %q", s.CurrentReading, record.Instant, record.IntervalMean)
+}
+
+// validate checks one channel, whose quantity has this unit in key names.
+func (c *Channel) validate(name, unit string) error {
+	type bound uint8
+	const (
+		finite   bound = iota
+		positive       // ≥ 0
+		share          // [0, 1)
+	)
+	allowed := [...]string{"a finite number", "≥ 0 and finite", "≥ 0 and < 1"}
+	for _, v := range []struct {
+		key   string
+		value float64
+		bound bound
+	}{
+		{"offset_" + unit, c.Offset, finite},
+		{"gain_error", c.GainError, finite},
+		{"noise_" + unit, c.Noise, positive},
+		{"walk_" + unit + "_per_sqrt_s", c.WalkPerSqrtS, positive},
+		{"offset_" + unit + "_per_k", c.OffsetPerK, finite},
+		{"quantum_" + unit, c.Quantum, positive},
+		{"range_" + unit, c.Range, positive},
+		{"delay_s", c.DelayS, positive},
+		{"dropout_share", c.DropoutShare, share},
+		{"dropout_s", c.DropoutS, positive},
+		{"stuck_share", c.StuckShare, share},
+		{"stuck_s", c.StuckS, positive},
+	} {
+		bad := math.IsNaN(v.value) || math.IsInf(v.value, 0) ||
+			v.bound != finite && v.value < 0 || v.bound == share && v.value >= 1
+		if bad {
+			return fmt.Errorf("%s.%s: %v, allowed is %s", name, v.key, v.value, allowed[v.bound])
+		}
+	}
+	for _, f := range []struct {
+		key           string
+		share, length float64
+	}{{"dropout", c.DropoutShare, c.DropoutS}, {"stuck", c.StuckShare, c.StuckS}} {
+		if f.share > 0 && f.length == 0 {
+			return fmt.Errorf("%s.%s_s: 0, allowed is > 0 where %s_share is given", name, f.key, f.key)
+		}
+	}
+	if c.Every < 0 {
+		return fmt.Errorf("%s.every: %d, allowed is ≥ 1", name, c.Every)
+	}
+	return nil
+}
