@@ -81,11 +81,46 @@ type Spec struct {
 
 // Setup is one estimator's start in one run.
 type Setup struct {
-	Spec            Spec
-	Cell            *cell.Cell // the cell it believes in; the fresh one, never the plant's aged one
-	SOCStart        float64    // what it is told, already limited to [0, 1]
-	HysteresisStart float64    // what it is told, [-1, 1]
-	PeriodS         float64    // the usual distance of samples, > 0; 0: not even
+	Spec Spec
+	Cell *cell.Cell // the cell it believes in; the fresh one, never the plant's aged one
+	// Model is Cell as Compile would make it, so that many runs share one;
+	// nil: the constructor compiles it.
+	Model           *cell.Model
+	SOCStart        float64 // what it is told, already limited to [0, 1]
+	HysteresisStart float64 // what it is told, [-1, 1]
+	PeriodS         float64 // the usual distance of samples, > 0; 0: not even
+}
+
+// Compile returns s.Model where it is given, else the believed cell compiled
+// for the spec's branches and the usual period. The error is cell.Compile's.
+func (s *Setup) Compile() (*cell.Model, error) {
+	if s.Model != nil {
+		return s.Model, nil
+	}
+	if s.Cell == nil {
+		return nil, fmt.Errorf("estimator: %s has neither a cell nor a model to believe in", s.Spec.Name)
+	}
+	o := cell.AsBuilt(s.PeriodS)
+	o.Branches = s.Spec.Branches
+	return cell.Compile(s.Cell, o)
+}
+
+// Resetter is an Estimator that can begin another run in place, as new as
+// from its constructor. Where the model is the same it allocates nothing. An
+// estimator whose Reset failed is not to be used again.
+type Resetter interface {
+	Reset(Setup) error
+}
+
+// Inspectable is an Estimator that shows its mean and covariance, for tests
+// and for tools that explain a run.
+type Inspectable interface {
+	// StateNames names the states in order, e.g. soc, branch_1_v.
+	StateNames() []string
+	// State writes the mean to dst, as long as StateNames.
+	State(dst []float64)
+	// Covariance writes the covariance to dst, row by row, n×n long.
+	Covariance(dst []float64)
 }
 
 // LostError says where and why a filter could not go on.
