@@ -131,8 +131,7 @@ type programKey struct{ duty, cell string }
 
 func (j *Job) prepare() (*shared, error) {
 	s := &shared{cells: map[string]*cell.Prepared{}, programs: map[programKey]*duty.Program{}}
-	sc := j.Set.Score
-	s.score = score.Settings{SettleAfterS: sc.SettleAfterS, ConvergeBand: sc.ConvergeBand, ConvergeHoldS: sc.ConvergeHoldS, LowSOC: sc.LowSOC}
+	s.score = scoreSettings(j.Set.Score)
 	for name, c := range j.Set.Cells {
 		p, err := cell.Prepare(c)
 		if err != nil {
@@ -169,4 +168,8 @@ func (j *Job) prepare() (*shared, error) {
 		s.programs[key] = p
 	}
 	return s, nil
+}
+
+func scoreSettings(s scenario.ScoreSettings) score.Settings {
+	return score.Settings{SettleAfterS: s.SettleAfterS, ConvergeBand: s.ConvergeBand, ConvergeHoldS: s.ConvergeHoldS, LowSOC: s.LowSOC}
 }

@@ -215,19 +215,32 @@ func (w *worker) follow(ctx context.Context, sink func(Block) error) (reason str
 
 // advance takes one estimator through a block and scores it.
 func (w *worker) advance(s *seat, truth *plant.Truth, readings *record.Readings) error {
+	if err := s.follow(readings, w.job.Nanotime); err != nil {
+		return err
+	}
+	if s.used > 0 {
+		t, e := truth.Slice(0, s.used), s.out.Slice(0, s.used)
+		s.acc.Add(&t, &e)
+	}
+	return nil
+}
+
+// follow takes the estimator through a block. It notes where one is lost; any
+// other error is returned.
+func (s *seat) follow(readings *record.Readings, nanotime func() int64) error {
 	s.used = 0
 	if s.lost != "" {
 		return nil
 	}
-	n := truth.Len()
+	n := readings.Len()
 	out := s.out.Slice(0, n)
 	var began int64
-	if w.job.Nanotime != nil {
-		began = w.job.Nanotime()
+	if nanotime != nil {
+		began = nanotime()
 	}
 	err := s.est.Advance(readings, &out)
-	if w.job.Nanotime != nil {
-		s.cost.Nanos += w.job.Nanotime() - began
+	if nanotime != nil {
+		s.cost.Nanos += nanotime() - began
 	}
 	s.used = n
 	if err != nil {
@@ -239,10 +252,6 @@ func (w *worker) advance(s *seat, truth *plant.Truth, readings *record.Readings)
 		s.used = lost.Sample - int(s.cost.Samples)
 	}
 	s.cost.Samples += int64(s.used)
-	if s.used > 0 {
-		t, e := truth.Slice(0, s.used), out.Slice(0, s.used)
-		s.acc.Add(&t, &e)
-	}
 	return nil
 }
 
