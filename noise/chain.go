@@ -18,14 +18,25 @@ type Setup struct {
 }
 
 // Chain is a sensor set in operation. It remembers what its links need, of
-// constant size, and never goes back.
+// constant size, and never goes back. The zero Chain is ready for Reset.
 type Chain struct {
-	set                                    Setup
-	current, voltage, temperature          channel
-	currentLag, voltageLag, temperatureLag lag
-	work                                   []float64
-	aboveRefK                              []float64
-	needsTemperature                       bool
+	set              Setup
+	sensors          [3]sensor // current, voltage, temperature
+	needsTemperature bool
+
+	work      []float64 // a block of scratch
+	aboveRefK []float64 // T - T_ref
+	dtS       []float64 // for Disturb
+
+	lastS, lastC float64 // for Disturb: the sample before
+	begun        bool
+}
+
+// sensor is a channel with its two delays, of which a run uses one.
+type sensor struct {
+	channel
+	lag  lag  // of even samples of truth
+	past past // of recorded readings
 }
 
 // NewChain returns a chain at the start of a run, or an error where the
@@ -45,27 +56,20 @@ func (c *Chain) Reset(s Setup) error {
 	if err := s.Sensors.Validate(); err != nil {
 		return fmt.Errorf("noise: %w", err)
 	}
-	c.set = s
-	for _, ch := range []struct {
-		name    string
-		channel *channel
-		lag     *lag
-		set     *Channel
-		streams *channelStreams
-	}{
-		{"current", &c.current, &c.currentLag, &c.set.Sensors.Current, &currentStreams},
-		{"voltage", &c.voltage, &c.voltageLag, &c.set.Sensors.Voltage, &voltageStreams},
-		{"temperature", &c.temperature, &c.temperatureLag, &c.set.Sensors.Temperature, &temperatureStreams},
-	} {
-		ch.channel.reset(s.Seed, *ch.set, ch.streams)
-		if err := ch.lag.reset(ch.set.DelayS, s.Sensors.SamplePeriodS, s.Samples); err != nil {
-			return fmt.Errorf("noise: %s.%w", ch.name, err)
+	c.set, c.lastS, c.lastC, c.begun = s, 0, s.TemperatureRefC, false
+	c.needsTemperature = false
+	for k, ch := range [...]*Channel{&s.Sensors.Current, &s.Sensors.Voltage, &s.Sensors.Temperature} {
+		x := &c.sensors[k]
+		x.channel.reset(s.Seed, *ch, &streams[k])
+		x.past.reset(ch.DelayS)
+		if err := x.lag.reset(ch.DelayS, s.Sensors.SamplePeriodS, s.Samples); err != nil {
+			return fmt.Errorf("noise: %s.%w", channelNames[k], err)
 		}
+		c.needsTemperature = c.needsTemperature || ch.OffsetPerK != 0
 	}
 	if c.set.Sensors.CurrentReading == "" {
 		c.set.Sensors.CurrentReading = record.Instant
 	}
-	c.needsTemperature = s.Sensors.Current.OffsetPerK != 0 || s.Sensors.Voltage.OffsetPerK != 0 || s.Sensors.Temperature.OffsetPerK != 0
 	return nil
 }
 
@@ -86,34 +90,36 @@ func (c *Chain) Read(truth *plant.Truth, out *record.Readings) {
 	}
 	mean := out.CurrentReading == record.IntervalMean
 
-	i := truth.CurrentA
+	x, i, to := &c.sensors[0], truth.CurrentA, out.CurrentA[:n]
 	if mean {
 		i = truth.CurrentMeanA
 	}
-	if l := &c.currentLag; l.whole > 0 {
+	if x.lag.whole > 0 {
 		if mean {
-			l.linear(i, i, out.CurrentA, false)
+			x.lag.linear(i, i, to, false)
 		} else {
-			l.held(i, out.CurrentA)
+			x.lag.held(i, to)
 		}
-		i = out.CurrentA
+		i = to
 	}
-	c.current.read(i[:n], c.aboveRefK, out.CurrentA[:n], c.work, dt)
+	x.read(i[:n], c.aboveRefK, to, c.work, dt)
 
+	x, to = &c.sensors[1], out.VoltageV[:n]
 	v := truth.VoltageV
 	if mean {
 		v = truth.VoltageBeforeV
 	}
-	if l := &c.voltageLag; l.whole > 0 {
-		l.linear(truth.VoltageV, truth.VoltageBeforeV, out.VoltageV, mean)
-		v = out.VoltageV
+	if x.lag.whole > 0 {
+		x.lag.linear(truth.VoltageV, truth.VoltageBeforeV, to, mean)
+		v = to
 	}
-	c.voltage.read(v[:n], c.aboveRefK, out.VoltageV[:n], c.work, dt)
+	x.read(v[:n], c.aboveRefK, to, c.work, dt)
 
+	x, to = &c.sensors[2], out.TemperatureC[:n]
 	t := truth.TemperatureC
-	if l := &c.temperatureLag; l.whole > 0 {
-		l.linear(t, t, out.TemperatureC, false)
-		t = out.TemperatureC
+	if x.lag.whole > 0 {
+		x.lag.linear(t, t, to, false)
+		t = to
 	}
-	c.temperature.read(t[:n], c.aboveRefK, out.TemperatureC[:n], c.work, dt)
+	x.read(t[:n], c.aboveRefK, to, c.work, dt)
 }

@@ -25,15 +25,8 @@ type channel struct {
 
 // spacing says how far apart the samples of a block are.
 type spacing struct {
-	periodS float64   // where dtS is nil
-	dtS     []float64 // each sample after the one before
-}
-
-func (s spacing) at(k int) float64 {
-	if s.dtS == nil {
-		return s.periodS
-	}
-	return s.dtS[k]
+	periodS float64   // even, where dtS is nil
+	dtS     []float64 // each sample after the one before, ≥ 0; the run's first is not looked at
 }
 
 func (c *channel) reset(seed uint64, set Channel, names *channelStreams) {
@@ -55,9 +48,12 @@ func (c *channel) reset(seed uint64, set Channel, names *channelStreams) {
 type channelStreams struct{ noise, walk, stuck, dropout string }
 
 var (
-	currentStreams     = channelStreams{"current.noise", "current.walk", "current.stuck", "current.dropout"}
-	voltageStreams     = channelStreams{"voltage.noise", "voltage.walk", "voltage.stuck", "voltage.dropout"}
-	temperatureStreams = channelStreams{"temperature.noise", "temperature.walk", "temperature.stuck", "temperature.dropout"}
+	channelNames = [...]string{"current", "voltage", "temperature"}
+	streams      = [...]channelStreams{
+		{"current.noise", "current.walk", "current.stuck", "current.dropout"},
+		{"voltage.noise", "voltage.walk", "voltage.stuck", "voltage.dropout"},
+		{"temperature.noise", "temperature.walk", "temperature.stuck", "temperature.dropout"},
+	}
 )
 
 // read writes to out what the channel reads of in, which may be out itself.
@@ -139,36 +135,31 @@ func (c *channel) addWalk(out, work []float64, dt spacing) {
 		c.walking, from = true, 1
 	}
 	c.walk.Normals(work[from:])
-	w := c.walked
-	if dt.dtS == nil {
-		std := c.set.WalkPerSqrtS * math.Sqrt(dt.periodS)
-		for k := from; k < len(out); k++ {
-			w += std * work[k]
-			out[k] += w
+	w, std := c.walked, c.set.WalkPerSqrtS*math.Sqrt(dt.periodS)
+	for k := from; k < len(out); k++ {
+		if dt.dtS != nil {
+			std = c.set.WalkPerSqrtS * math.Sqrt(dt.dtS[k])
 		}
-	} else {
-		for k := from; k < len(out); k++ {
-			w += c.set.WalkPerSqrtS * math.Sqrt(dt.dtS[k]) * work[k]
-			out[k] += w
-		}
+		w += std * work[k]
+		out[k] += w
 	}
 	c.walked = w
 }
 
 // stick repeats the last good reading while the channel is stuck. Between the
 // readings of a channel that makes fewer, nothing is held.
-func (c *channel) stick(out, work []float64, dt spacing) {
-	c.stuck.src.Float64s(work)
+func (c *channel) stick(out, marks []float64, dt spacing) {
+	c.stuck.mark(marks, dt)
 	phase := c.phase
 	for k, v := range out {
-		on := c.stuck.step(work[k], dt.at(k))
 		reads := phase == 0
-		if phase--; phase < 0 {
-			phase = max(c.set.Every, 1) - 1
+		if reads {
+			phase = max(c.set.Every, 1)
 		}
+		phase--
 		switch {
 		case !reads || v != v:
-		case on && c.haveGood:
+		case marks[k] != 0 && c.haveGood:
 			out[k] = c.good
 		default:
 			c.good, c.haveGood = v, true
@@ -177,10 +168,10 @@ func (c *channel) stick(out, work []float64, dt spacing) {
 }
 
 // drop loses readings while the channel drops out.
-func (c *channel) drop(out, work []float64, dt spacing) {
-	c.dropout.src.Float64s(work)
-	for k := range out {
-		if c.dropout.step(work[k], dt.at(k)) {
+func (c *channel) drop(out, marks []float64, dt spacing) {
+	c.dropout.mark(marks, dt)
+	for k, on := range marks {
+		if on != 0 {
 			out[k] = math.NaN()
 		}
 	}

@@ -15,8 +15,6 @@ type spell struct {
 	src          stream.Source
 	share, meanS float64
 	on, begun    bool
-	end, begin   float64 // probabilities of a step of lastS
-	lastS        float64
 }
 
 func (p *spell) reset(seed uint64, name string, share, meanS float64) {
@@ -26,22 +24,42 @@ func (p *spell) reset(seed uint64, name string, share, meanS float64) {
 	}
 }
 
-// step moves on by dtS, spending the uniform u, and reports whether the fault
-// is on there. At the first sample dtS does not matter.
-func (p *spell) step(u, dtS float64) bool {
-	if dtS != p.lastS {
-		p.lastS = dtS
-		p.end = min(dtS/p.meanS, 1, (1-p.share)/p.share)
-		p.begin = p.end * p.share / (1 - p.share)
+// odds returns the probabilities that a spell begins and ends at a step of dtS.
+func (p *spell) odds(dtS float64) (begin, end float64) {
+	end = min(dtS/p.meanS, 1, (1-p.share)/p.share)
+	return end * p.share / (1 - p.share), end
+}
+
+// mark moves on by a block and writes to marks 1 where the fault is on, else 0.
+// It spends one uniform number a sample.
+func (p *spell) mark(marks []float64, dt spacing) {
+	p.src.Float64s(marks)
+	on, from := p.on, 0
+	if !p.begun && len(marks) > 0 {
+		p.begun, from = true, 1
+		on = marks[0] < p.share
+		marks[0] = one(on)
 	}
-	switch {
-	case !p.begun:
-		p.begun = true
-		p.on = u < p.share
-	case p.on:
-		p.on = u >= p.end
-	default:
-		p.on = u < p.begin
+	begin, end := p.odds(dt.periodS)
+	for k := from; k < len(marks); k++ {
+		if dt.dtS != nil {
+			begin, end = p.odds(dt.dtS[k])
+		}
+		turn := begin
+		if on {
+			turn = end
+		}
+		if marks[k] < turn {
+			on = !on
+		}
+		marks[k] = one(on)
 	}
-	return p.on
+	p.on = on
+}
+
+func one(on bool) float64 {
+	if on {
+		return 1
+	}
+	return 0
 }
