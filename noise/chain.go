@@ -53,22 +53,24 @@ func NewChain(s Setup) (*Chain, error) {
 // unless a delay is longer than any before it. After an error the chain is not
 // to be used.
 func (c *Chain) Reset(s Setup) error {
-	if err := s.Sensors.Validate(); err != nil {
+	c.set = s
+	def := &c.set.Sensors
+	if err := def.Validate(); err != nil {
 		return fmt.Errorf("noise: %w", err)
 	}
-	c.set, c.lastS, c.lastC, c.begun = s, 0, s.TemperatureRefC, false
+	c.lastS, c.lastC, c.begun = 0, s.TemperatureRefC, false
 	c.needsTemperature = false
-	for k, ch := range [...]*Channel{&s.Sensors.Current, &s.Sensors.Voltage, &s.Sensors.Temperature} {
+	for k, ch := range [...]*Channel{&def.Current, &def.Voltage, &def.Temperature} {
 		x := &c.sensors[k]
 		x.channel.reset(s.Seed, *ch, &streams[k])
 		x.past.reset(ch.DelayS)
-		if err := x.lag.reset(ch.DelayS, s.Sensors.SamplePeriodS, s.Samples); err != nil {
+		if err := x.lag.reset(ch.DelayS, def.SamplePeriodS, s.Samples); err != nil {
 			return fmt.Errorf("noise: %s.%w", channelNames[k], err)
 		}
 		c.needsTemperature = c.needsTemperature || ch.OffsetPerK != 0
 	}
-	if c.set.Sensors.CurrentReading == "" {
-		c.set.Sensors.CurrentReading = record.Instant
+	if def.CurrentReading == "" {
+		def.CurrentReading = record.Instant
 	}
 	return nil
 }

@@ -158,7 +158,7 @@ func (c *channel) stick(out, marks []float64, dt spacing) {
 		}
 		phase--
 		switch {
-		case !reads || v != v:
+		case !reads || math.IsNaN(v):
 		case marks[k] != 0 && c.haveGood:
 			out[k] = c.good
 		default:

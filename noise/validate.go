@@ -3,6 +3,7 @@ package noise
 import (
 	"fmt"
 	"math"
+	"strings"
 
 	"soctrial/plant/record"
 )
@@ -40,17 +41,17 @@ func (c *Channel) validate(name, unit string) error {
 	)
 	allowed := [...]string{"a finite number", "≥ 0 and finite", "≥ 0 and < 1"}
 	for _, v := range []struct {
-		key   string
+		key   string // % stands for the unit
 		value float64
 		bound bound
 	}{
-		{"offset_" + unit, c.Offset, finite},
+		{"offset_%", c.Offset, finite},
 		{"gain_error", c.GainError, finite},
-		{"noise_" + unit, c.Noise, positive},
-		{"walk_" + unit + "_per_sqrt_s", c.WalkPerSqrtS, positive},
-		{"offset_" + unit + "_per_k", c.OffsetPerK, finite},
-		{"quantum_" + unit, c.Quantum, positive},
-		{"range_" + unit, c.Range, positive},
+		{"noise_%", c.Noise, positive},
+		{"walk_%_per_sqrt_s", c.WalkPerSqrtS, positive},
+		{"offset_%_per_k", c.OffsetPerK, finite},
+		{"quantum_%", c.Quantum, positive},
+		{"range_%", c.Range, positive},
 		{"delay_s", c.DelayS, positive},
 		{"dropout_share", c.DropoutShare, share},
 		{"dropout_s", c.DropoutS, positive},
@@ -60,7 +61,7 @@ func (c *Channel) validate(name, unit string) error {
 		bad := math.IsNaN(v.value) || math.IsInf(v.value, 0) ||
 			v.bound != finite && v.value < 0 || v.bound == share && v.value >= 1
 		if bad {
-			return fmt.Errorf("%s.%s: %v, allowed is %s", name, v.key, v.value, allowed[v.bound])
+			return fmt.Errorf("%s.%s: %v, allowed is %s", name, strings.Replace(v.key, "%", unit, 1), v.value, allowed[v.bound])
 		}
 	}
 	for _, f := range []struct {
