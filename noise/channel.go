@@ -150,21 +150,23 @@ func (c *channel) addWalk(out, work []float64, dt spacing) {
 // readings of a channel that makes fewer, nothing is held.
 func (c *channel) stick(out, marks []float64, dt spacing) {
 	c.stuck.mark(marks, dt)
-	phase := c.phase
+	good, haveGood := c.good, c.haveGood
+	every, phase := max(c.set.Every, 1), c.phase
 	for k, v := range out {
 		reads := phase == 0
 		if reads {
-			phase = max(c.set.Every, 1)
+			phase = every
 		}
 		phase--
 		switch {
 		case !reads || math.IsNaN(v):
-		case marks[k] != 0 && c.haveGood:
-			out[k] = c.good
+		case marks[k] != 0 && haveGood:
+			out[k] = good
 		default:
-			c.good, c.haveGood = v, true
+			good, haveGood = v, true
 		}
 	}
+	c.good, c.haveGood = good, haveGood
 }
 
 // drop loses readings while the channel drops out.
