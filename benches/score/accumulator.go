@@ -36,8 +36,8 @@ type sum struct{ part, total float64 }
 func (s *sum) fold()          { s.total += s.part; s.part = 0 }
 func (s *sum) value() float64 { return s.total + s.part }
 
-// errors are the sums over the samples before, or from, settling on.
-type errors struct {
+// errorSums are the sums over the samples before, or from, settling on.
+type errorSums struct {
 	weight, bias, abs, square sum
 	max                       float64 // negative: none yet
 }
@@ -54,7 +54,7 @@ type Accumulator struct {
 	duration float64 // NaN: not told
 	limited  float64
 
-	unsettled, settled errors
+	unsettled, settled errorSums
 	lowMax             float64 // negative: none yet
 	stepMax            float64 // negative: none yet
 	last               float64 // error of the last scored sample
@@ -79,7 +79,7 @@ func (a *Accumulator) Reset(s Settings) {
 	a.set = s
 	a.samples, a.startS, a.lastS, a.periodS = 0, 0, 0, 0
 	a.duration, a.limited = nan, 0
-	a.unsettled, a.settled = errors{max: -1}, errors{max: -1}
+	a.unsettled, a.settled = errorSums{max: -1}, errorSums{max: -1}
 	a.lowMax, a.stepMax, a.last, a.before = -1, -1, nan, nan
 	a.innovation, a.nis, a.nees = sum{}, sum{}, sum{}
 	a.innovationW, a.nisW, a.neesW, a.coverW = sum{}, sum{}, sum{}, sum{}
@@ -150,102 +150,108 @@ func settledFrom(timeS []float64, atS float64) int {
 	return n
 }
 
+// sizeBits returns |x| as the integer of its bits. Those order as the sizes do,
+// NaN above all, and integers are compared without a branch to mispredict.
+func sizeBits(x float64) uint64 { return math.Float64bits(x) &^ (1 << 63) }
+
 // addErrors sums the errors of reported against soc.
-func (a *Accumulator) addErrors(to *errors, soc, reported []float64) {
+func (a *Accumulator) addErrors(to *errorSums, soc, reported []float64) {
 	bias, abs, square := to.bias.part, to.abs.part, to.square.part
-	largest, step, low := to.max, a.stepMax, a.lowMax
-	before, below := a.before, a.set.LowSOC
-	hist, top := &a.hist, a.hist.top
-	counted := 0
 	reported = reported[:len(soc)]
+	before, below := a.before, a.set.LowSOC
+	if math.IsNaN(before) {
+		before = reported[0] - soc[0] // no step into the first
+	}
+	var largest, step, low uint64
+	anyLow := false
+	count := &a.hist.count
 	for i, z := range soc {
 		e := reported[i] - z
-		size := math.Abs(e)
 		bias += e
-		abs += size
 		square += e * e
-		if size > largest {
-			largest = size
-		}
-		if d := math.Abs(e - before); d > step {
-			step = d
-		}
+		bits := sizeBits(e)
+		size := math.Float64frombits(bits)
+		abs += size
+		largest = max(largest, bits)
+		step = max(step, sizeBits(e-before))
 		before = e
-		if z < below && size > low {
-			low = size
+		if z < below {
+			anyLow = true
+			low = max(low, bits)
 		}
-		if size < 1 {
-			b := int(size * perUnit)
-			hist.count[b]++
-			if b >= top {
-				top = b + 1
-			}
-			counted++
-		} else if size >= 1 {
-			hist.count[bins-1]++
-			top = bins
-			counted++
+		if b := int(size * perUnit); uint(b) < bins {
+			count[b]++
+		} else {
+			count[bins-1]++
 		}
 	}
-	hist.top = top
-	hist.number += int64(counted)
 	to.bias.part, to.abs.part, to.square.part = bias, abs, square
 	to.weight.part += float64(len(soc))
-	to.max, a.stepMax, a.lowMax = largest, step, low
+	to.max = max(to.max, math.Float64frombits(largest))
+	if anyLow {
+		a.lowMax = max(a.lowMax, math.Float64frombits(low))
+	}
+	if len(soc) > 1 || !math.IsNaN(a.before) {
+		a.stepMax = max(a.stepMax, math.Float64frombits(step))
+	}
+	a.hist.top = max(a.hist.top, binOf(math.Float64frombits(largest))+1)
+	a.hist.number += int64(len(soc))
 	a.before, a.last = before, before
 }
 
-// addSpread compares the stated deviation with the error of the SOC before it
-// is limited.
+// addSpread compares the stated deviations with the error of the SOC before it
+// is limited. A stated deviation of 0 covers an error of 0 alone, and has no
+// part in NEES.
 func (a *Accumulator) addSpread(soc, free, std []float64) {
-	nees := a.nees.part
-	var stated, divided, covered int
 	free, std = free[:len(soc)], std[:len(soc)]
+	nees := a.nees.part
+	var covered, unstated, certain int
 	for i, z := range soc {
-		s := std[i]
-		if s != s {
-			continue
-		}
-		stated++
-		e := free[i] - z
-		if math.Abs(e) <= twoSided*s {
-			covered++
-		}
+		s, e := std[i], free[i]-z
 		if s > 0 {
 			nees += e * e / (s * s)
-			divided++
+		} else if s == 0 {
+			certain++
+		} else {
+			unstated++
+			continue
+		}
+		if sizeBits(e) <= sizeBits(twoSided*s) {
+			covered++
 		}
 	}
 	a.nees.part = nees
-	a.coverW.part += float64(stated)
-	a.neesW.part += float64(divided)
+	a.neesW.part += float64(len(soc) - unstated - certain)
+	a.coverW.part += float64(len(soc) - unstated)
 	a.coverIn.part += float64(covered)
 }
 
-// addInnovations compares innovations with their stated deviation.
+// addInnovations compares the innovations with their stated deviations.
 func (a *Accumulator) addInnovations(innovation, std []float64) {
-	square, nis := a.innovation.part, a.nis.part
-	var measured, divided, within int
 	std = std[:len(innovation)]
+	square, nis := a.innovation.part, a.nis.part
+	var within, unmeasured, unsure int
 	for i, y := range innovation {
 		if y != y {
+			unmeasured++
 			continue
 		}
-		measured++
 		y2 := y * y
 		square += y2
-		if s := std[i]; s > 0 {
-			q := y2 / (s * s)
-			nis += q
-			divided++
-			if q <= inBand {
-				within++
-			}
+		s := std[i]
+		if !(s > 0) {
+			unsure++
+			continue
+		}
+		q := y2 / (s * s)
+		nis += q
+		if sizeBits(q) <= math.Float64bits(inBand) {
+			within++
 		}
 	}
 	a.innovation.part, a.nis.part = square, nis
-	a.innovationW.part += float64(measured)
-	a.nisW.part += float64(divided)
+	a.innovationW.part += float64(len(innovation) - unmeasured)
+	a.nisW.part += float64(len(innovation) - unmeasured - unsure)
 	a.nisIn.part += float64(within)
 }
 
@@ -274,7 +280,7 @@ func (a *Accumulator) watchOne(t, e float64) {
 
 // fold moves every running sum one storey up.
 func (a *Accumulator) fold() {
-	for _, e := range []*errors{&a.unsettled, &a.settled} {
+	for _, e := range []*errorSums{&a.unsettled, &a.settled} {
 		e.weight.fold()
 		e.bias.fold()
 		e.abs.fold()

@@ -2,6 +2,7 @@ package score
 
 import (
 	"math"
+	"math/rand/v2"
 	"testing"
 
 	"pgregory.net/rapid"
@@ -318,30 +319,30 @@ func TestAddAllocatesNothing(t *testing.T) {
 	}
 }
 
-// BenchmarkAdd is what scoring costs a sample of a plain run.
+// BenchmarkAdd is what scoring costs a sample of a plain run of about an hour.
+// As in a run, a block still lies in the nearest cache when it is scored.
 func BenchmarkAdd(b *testing.B) {
 	const block, blocks = 256, 14
-	truth, est := plant.MakeTruth(block*blocks), estimator.MakeEstimate(block*blocks)
-	truth.PeriodS = 1
-	x := uint64(1)
-	noise := func() float64 { // a small xorshift; any spread will do
-		x ^= x << 13
-		x ^= x >> 7
-		x ^= x << 17
-		return float64(x>>11)/(1<<53) - 0.5
-	}
-	for k := range truth.TimeS {
-		truth.TimeS[k], truth.SOC[k] = float64(k), 1-float64(k)/4000
-		est.SOC[k] = truth.SOC[k] + 0.02*noise()
-		est.SOCFree[k], est.SOCStd[k] = est.SOC[k], 0.005
-		est.InnovationV[k], est.InnovationStdV[k] = 0.01*noise(), 0.003
+	var truth [2]plant.Truth // before and after settling
+	var est [2]estimator.Estimate
+	r := rand.New(rand.NewPCG(1, 2))
+	for i := range truth {
+		t, e := plant.MakeTruth(block), estimator.MakeEstimate(block)
+		t.PeriodS = 1
+		for k := range block {
+			t.TimeS[k], t.SOC[k] = float64(1000*i+k), 1-float64(k)/400
+			e.SOC[k] = t.SOC[k] + 0.005*r.NormFloat64()
+			e.SOCFree[k], e.SOCStd[k] = e.SOC[k], 0.005
+			e.InnovationV[k], e.InnovationStdV[k] = 0.003*r.NormFloat64(), 0.003
+		}
+		truth[i], est[i] = t, e
 	}
 	a := new(Accumulator)
 	for b.Loop() {
 		a.Reset(Settings{SettleAfterS: 600, ConvergeBand: 0.05, ConvergeHoldS: 60, LowSOC: 0.2})
 		for k := range blocks {
-			t, e := truth.Slice(k*block, (k+1)*block), est.Slice(k*block, (k+1)*block)
-			a.Add(&t, &e)
+			i := min(k/3, 1)
+			a.Add(&truth[i], &est[i])
 		}
 		_ = a.Metrics()
 	}

@@ -21,15 +21,20 @@ func (h *histogram) clear() {
 	h.top, h.number = 0, 0
 }
 
+// binOf returns the bin of size ≥ 0.
+func binOf(size float64) int {
+	if size < 1 {
+		return int(size * perUnit)
+	}
+	return bins - 1
+}
+
 // add counts size, which is not negative; NaN is not counted.
 func (h *histogram) add(size float64) {
 	if !(size >= 0) {
 		return
 	}
-	b := bins - 1
-	if size < 1 {
-		b = int(size * perUnit)
-	}
+	b := binOf(size)
 	h.count[b]++
 	h.top = max(h.top, b+1)
 	h.number++
