@@ -58,7 +58,8 @@ type Estimator interface {
 	UnmarshalBinary(state []byte) error
 }
 
-// Spec is an estimator's definition, as a person wrote it.
+// Spec is an estimator's definition, as a person wrote it. A deviation that a
+// kind may do without is NaN where it was not given.
 type Spec struct {
 	Name     string
 	Kind     string

@@ -148,6 +148,9 @@ func (c *counter) UnmarshalBinary(state []byte) error {
 	if err := estimator.UnpackState(c.kind, state, v[:]); err != nil {
 		return err
 	}
+	if !(v[6] >= 0 && v[6] == math.Trunc(v[6]) && v[6] < 1<<53) {
+		return fmt.Errorf("counting: saved state has followed %g samples, allowed is a whole number ≥ 0", v[6])
+	}
 	c.soc, c.socVar, c.h, c.heldA, c.tempC, c.timeS, c.samples, c.restS = v[0], v[1], v[2], v[3], v[4], v[5], int(v[6]), v[7]
 	c.lost = nil
 	return nil

@@ -6,6 +6,7 @@ import (
 	"testing"
 
 	"soctrial/estimator"
+	"soctrial/estimator/estimatortest"
 	"soctrial/estimator/kalman"
 	"soctrial/plant/cell"
 	"soctrial/plant/record"
@@ -76,6 +77,16 @@ func BenchmarkEKF2RC(b *testing.B) { benchmarkEKF(b, benchCell(), func(*record.R
 // BenchmarkEKF2RCGeneral is the same by the general step: uneven samples.
 func BenchmarkEKF2RCGeneral(b *testing.B) {
 	benchmarkEKF(b, benchCell(), func(in *record.Readings) { in.PeriodS = 0 })
+}
+
+// BenchmarkEKFEverything is the EKF of a cell with hysteresis, temperature
+// tables and time constants over SOC, at a temperature that never rests.
+func BenchmarkEKFEverything(b *testing.B) {
+	benchmarkEKF(b, estimatortest.RichCell(), func(in *record.Readings) {
+		for k := range in.TemperatureC {
+			in.TemperatureC[k] = 25 + 10*math.Sin(float64(k)/200)
+		}
+	})
 }
 
 func benchmarkEKF(b *testing.B, c *cell.Cell, change func(*record.Readings)) {

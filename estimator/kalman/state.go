@@ -1,6 +1,11 @@
 package kalman
 
-import "soctrial/estimator"
+import (
+	"fmt"
+	"math"
+
+	"soctrial/estimator"
+)
 
 // stateLen is how many numbers a saved state of n branches holds.
 func stateLen(n int) int { return 6 + (n + 1) + (n+1)*(n+2)/2 }
@@ -24,6 +29,9 @@ func (f *EKF) UnmarshalBinary(state []byte) error {
 	v := make([]float64, stateLen(f.n))
 	if err := estimator.UnpackState(kindEKF, state, v); err != nil {
 		return err
+	}
+	if !(v[1] >= 0 && v[1] == math.Trunc(v[1]) && v[1] < 1<<53) {
+		return fmt.Errorf("kalman: saved state has followed %g samples, allowed is a whole number ≥ 0", v[1])
 	}
 	f.samples, f.timeS, f.heldA, f.tempC, f.h = int(v[1]), v[2], v[3], v[4], v[5]
 	v = v[6:]
