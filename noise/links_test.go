@@ -37,15 +37,18 @@ func oracle(ch Channel, name string, seed uint64, delayed, temperatureC []float6
 func TestLinksAgainstTheFormula(t *testing.T) {
 	truth := unsteadyTruth(1000, 0.5)
 	for name, ch := range map[string]Channel{
-		"ideal":             {},
-		"offset":            {Offset: 0.25},
-		"gain":              {GainError: -0.1},
-		"noise":             {Noise: 0.3},
-		"walk":              {WalkPerSqrtS: 0.1},
-		"offset per kelvin": {OffsetPerK: 0.02},
-		"quantum":           {Quantum: 0.3},
-		"range":             {Range: 3.71},
-		"usual":             {Offset: -0.01, GainError: 0.01, Noise: 0.05, Quantum: 0.01},
+		"ideal":              {},
+		"offset":             {Offset: 0.25},
+		"gain":               {GainError: -0.1},
+		"noise":              {Noise: 0.3},
+		"walk":               {WalkPerSqrtS: 0.1},
+		"offset per kelvin":  {OffsetPerK: 0.02},
+		"quantum":            {Quantum: 0.3},
+		"range":              {Range: 3.71},
+		"usual":              {Offset: -0.01, GainError: 0.01, Noise: 0.05, Quantum: 0.01},
+		"usual with a range": {Noise: 0.05, Quantum: 0.01, Range: 3.7},
+		"usual per kelvin":   {Noise: 0.05, Quantum: 0.01, OffsetPerK: 0.01},
+		"usual walking":      {Noise: 0.05, Quantum: 0.01, WalkPerSqrtS: 0.05},
 		"all": {Offset: 0.1, GainError: 0.2, Noise: 0.4, WalkPerSqrtS: 0.2, OffsetPerK: 0.01,
 			Quantum: 0.07, Range: 5},
 	} {
