@@ -72,7 +72,7 @@ func Columns() []Column {
 		c := number(name, math.NaN(), sensorRange(name), func(r *Row) *float64 { return &r.Override[i] })
 		if strings.HasSuffix(name, "_every") {
 			at := c.number
-			c.Kind, c.Default, c.number = Int, NullValue(Int), nil
+			c.Kind, c.Default = Int, NullValue(Int)
 			c.get = func(r *Row) Value {
 				if x := *at(r); x == x {
 					return IntValue(int64(x))
@@ -305,7 +305,8 @@ func validateRow(r *Row, cols []Column) error {
 			if math.IsNaN(x) && !c.Default.Null {
 				return bad(c.Name, "NaN", c.Allowed())
 			}
-			if !math.IsNaN(x) && !c.Range.Holds(x) {
+			_, isWhole := whole(x)
+			if !math.IsNaN(x) && (!c.Range.Holds(x) || c.Kind == Int && !isWhole) {
 				return bad(c.Name, NumberValue(x).String(), c.Allowed())
 			}
 			continue
@@ -316,13 +317,6 @@ func validateRow(r *Row, cols []Column) error {
 		}
 		if _, err := c.Fit(v); err != nil {
 			return err
-		}
-	}
-	for i, name := range SensorColumns() {
-		if x := r.Override[i]; strings.HasSuffix(name, "_every") && x == x {
-			if _, ok := whole(x); !ok {
-				return bad(name, NumberValue(x).String(), fmt.Sprintf("a whole number in [1, %d]", maxSubsteps))
-			}
 		}
 	}
 	for _, l := range r.Labels {
