@@ -42,15 +42,7 @@ type EKF struct {
 	voltageVarV2  float64
 	currentVarA2  float64
 
-	// what a step of dtS comes to
-	dtS     float64
-	decay   [cell.MaxBranches]float64 // where the time constant is fixed
-	rise    [cell.MaxBranches]float64
-	perA    [2]float64 // SOC moved by 1 A: discharge, charge
-	bSOC    float64    // input gain of SOC: without coulombic efficiency, as the noise's
-	socVar  float64    // process variances of one step
-	branchV float64
-
+	paced
 	x       [maxStates]float64
 	p       [maxStates][maxStates]float64 // upper triangle
 	h       float64                       // hysteresis
@@ -148,19 +140,24 @@ func (f *EKF) Advance(in *record.Readings, out *estimator.Estimate) error {
 	for k := 0; k < n && f.lost == nil; {
 		if plain && f.samples > 0 {
 			f.pace(in.PeriodS)
+			var why stop
 			switch f.n {
 			case 1:
-				k = f.run1(in, out, k)
+				k, why = f.run1(in, out, k)
 			case 2:
-				k = f.run2(in, out, k)
+				k, why = f.run2(in, out, k)
 			case 3:
-				k = f.run3(in, out, k)
+				k, why = f.run3(in, out, k)
 			}
-			if k == n || f.lost != nil {
+			if k == n || why == lost {
 				break
 			}
+			if why == leftInterval {
+				continue
+			}
 		}
-		// The first sample, and any with a missing reading, goes the general way.
+		// The first sample, one with a missing reading and one that steps over
+		// a point of the tables go the general way, wherever a block begins.
 		f.step(in, out, k)
 		k++
 	}
@@ -170,7 +167,22 @@ func (f *EKF) Advance(in *record.Readings, out *estimator.Estimate) error {
 	return nil
 }
 
-// pace makes ready what a step of dtS comes to.
+// paced is what a step of dtS comes to. The kernels read it from memory where
+// they use it: there are not registers enough for it beside the state.
+type paced struct {
+	dtS     float64
+	decay   [cell.MaxBranches]float64 // where the time constant is fixed
+	rise    [cell.MaxBranches]float64
+	both    [3][3]float64 // products of two decays, of the first three branches
+	perA    [2]float64    // SOC moved by 1 A: discharge, charge
+	bSOC    float64       // input gain of SOC, without coulombic efficiency
+	bSOCVar float64       // times the current's variance
+	socVar  float64       // process variances of one step
+	branchV float64
+	socQ    float64 // whole variance a step adds to SOC
+}
+
+// pace makes a step of dtS ready.
 func (f *EKF) pace(dtS float64) {
 	if dtS == f.dtS {
 		return
@@ -185,10 +197,17 @@ func (f *EKF) pace(dtS float64) {
 			}
 		}
 	}
+	for r := range f.both {
+		for c := range f.both {
+			f.both[r][c] = f.decay[r] * f.decay[c]
+		}
+	}
 	f.perA[0] = dtS / (3600 * m.CapacityAh)
 	f.perA[1] = f.perA[0] * m.Efficiency
 	f.bSOC = -f.perA[0]
+	f.bSOCVar = f.bSOC * f.currentVarA2
 	f.socVar, f.branchV = f.socVarPerS*dtS, f.branchVarPerS*dtS
+	f.socQ = f.socVar + f.bSOC*f.bSOCVar
 }
 
 // begun counts samples samples whose last was at timeS.

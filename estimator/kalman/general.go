@@ -109,12 +109,11 @@ func (f *EKF) update(currentA, voltageV float64, out *estimator.Estimate, k int)
 			}
 		}
 	}
-	if f.lose(s) {
-		return
+	seen := innovation
+	if voltageV != voltageV {
+		seen = predicted
 	}
-	if math.IsInf(predicted, 0) || predicted != predicted { // without a reading to show it in the state
-		f.lost = &estimator.LostError{Sample: f.samples - 1, TimeS: f.timeS,
-			Cause: fmt.Sprintf("state not finite: predicted voltage is %.3g V under %.3g A", predicted, currentA)}
+	if f.lose(s, seen) {
 		return
 	}
 	out.SOC[k] = min(max(f.x[0], 0), 1)
@@ -134,25 +133,21 @@ func (f *EKF) at(r, c int) float64 {
 }
 
 // lose finds out whether the filter can go on after the sample just counted,
-// whose innovation has variance s, and keeps the reason if not.
-func (f *EKF) lose(s float64) bool {
+// and keeps the reason if not. s is the innovation's variance, volts the
+// innovation or, without a reading, the prediction: a branch that is no longer
+// finite shows in it.
+func (f *EKF) lose(s, volts float64) bool {
 	cause := ""
 	if !(s > 0) {
-		cause = fmt.Sprintf("covariance not positive: variance of the innovation is %.3g", s)
+		cause = fmt.Sprintf("covariance not positive: variance of the innovation is %.3g V²", s)
 	}
-	sum, largest := 0.0, 0
-	for r := 0; r <= f.n; r++ {
-		v := f.p[r][r]
-		if !(v >= 0) && cause == "" {
+	for r := 0; r <= f.n && cause == ""; r++ {
+		if v := f.p[r][r]; !(v >= 0) {
 			cause = fmt.Sprintf("covariance not positive: variance of %s is %.3g", stateName(r), v)
 		}
-		sum += f.x[r]*f.x[r] + v
-		if !(math.Abs(f.x[r]) <= math.Abs(f.x[largest])) {
-			largest = r
-		}
 	}
-	if !(sum < math.Inf(1)) && cause == "" {
-		cause = fmt.Sprintf("state not finite: %s is %.3g", stateName(largest), f.x[largest])
+	if z := f.x[0]; !(volts*volts+z*z < math.Inf(1)) && cause == "" {
+		cause = fmt.Sprintf("state not finite: soc is %.3g after an innovation of %.3g V", z, volts)
 	}
 	if cause != "" {
 		f.lost = &estimator.LostError{Sample: f.samples - 1, TimeS: f.timeS, Cause: cause}

@@ -8,17 +8,13 @@ import (
 )
 
 // run3 is run2 for three branches.
-func (f *EKF) run3(in *record.Readings, out *estimator.Estimate, k int) int {
+func (f *EKF) run3(in *record.Readings, out *estimator.Estimate, k int) (next int, why stop) {
 	cur := in.CurrentA[k:]
 	volt := in.VoltageV[k:][:len(cur)]
 	soc, free, std := out.SOC[k:][:len(cur)], out.SOCFree[k:][:len(cur)], out.SOCStd[k:][:len(cur)]
 	pred, inno, innoStd := out.VoltagePredictedV[k:][:len(cur)], out.InnovationV[k:][:len(cur)], out.InnovationStdV[k:][:len(cur)]
 
 	mean := in.CurrentReading == record.IntervalMean
-	perA, b0, varA, varV := f.perA, f.bSOC, f.currentVarA2, f.voltageVarV2
-	a1, a2, a3, rise1, rise2, rise3 := f.decay[0], f.decay[1], f.decay[2], f.rise[0], f.rise[1], f.rise[2]
-	a11, a12, a13, a22, a23, a33 := a1*a1, a1*a2, a1*a3, a2*a2, a2*a3, a3*a3
-	u0, q0, qv := b0*varA, f.socVar+b0*b0*varA, f.branchV
 	inf := math.Inf(1)
 
 	z, v1, v2, v3 := f.x[0], f.x[1], f.x[2], f.x[3]
@@ -26,11 +22,11 @@ func (f *EKF) run3(in *record.Readings, out *estimator.Estimate, k int) int {
 	p11, p12, p13, p22, p23, p33 := f.p[1][1], f.p[1][2], f.p[1][3], f.p[2][2], f.p[2][3], f.p[3][3]
 	held := f.heldA
 	g := f.view.Segment(z)
-	var s float64
-	j, lost := 0, false
+	var s, y float64
+	j := 0
 	for ; j < len(cur); j++ {
 		i, volts := cur[j], volt[j]
-		if i != i || volts != volts {
+		if x := i + volts; x != x {
 			break
 		}
 		if mean {
@@ -38,46 +34,48 @@ func (f *EKF) run3(in *record.Readings, out *estimator.Estimate, k int) int {
 		}
 		// predict
 		if !(z >= g.Lo && z < g.Hi) {
-			g = f.view.Segment(z)
+			why = leftInterval
+			break
+		}
+		after := z - held*f.perA[math.Float64bits(held)>>63]
+		if !(after >= g.Lo && after < g.Hi) {
+			break
 		}
 		t := z - g.Ref
 		tt := t * t
-		b1 := rise1 * ((g.R[0].Y + t*g.R[0].B) + tt*(g.R[0].C+t*g.R[0].D))
-		b2 := rise2 * ((g.R[1].Y + t*g.R[1].B) + tt*(g.R[1].C+t*g.R[1].D))
-		b3 := rise3 * ((g.R[2].Y + t*g.R[2].B) + tt*(g.R[2].C+t*g.R[2].D))
-		z -= held * perA[math.Float64bits(held)>>63]
-		v1 = a1*v1 + b1*held
-		v2 = a2*v2 + b2*held
-		v3 = a3*v3 + b3*held
+		b1 := f.rise[0] * ((g.R[0].Y + t*g.R[0].B) + tt*(g.R[0].C+t*g.R[0].D))
+		b2 := f.rise[1] * ((g.R[1].Y + t*g.R[1].B) + tt*(g.R[1].C+t*g.R[1].D))
+		b3 := f.rise[2] * ((g.R[2].Y + t*g.R[2].B) + tt*(g.R[2].C+t*g.R[2].D))
+		z = after
+		v1 = f.decay[0]*v1 + b1*held
+		v2 = f.decay[1]*v2 + b2*held
+		v3 = f.decay[2]*v3 + b3*held
 		held = i
-		p00 += q0
-		p01 = p01*a1 + b1*u0
-		p02 = p02*a2 + b2*u0
-		p03 = p03*a3 + b3*u0
-		u1, u2 := b1*varA, b2*varA
-		p11 = (p11*a11 + qv) + b1*u1
-		p12 = p12*a12 + b2*u1
-		p13 = p13*a13 + b3*u1
-		p22 = (p22*a22 + qv) + b2*u2
-		p23 = p23*a23 + b3*u2
-		p33 = (p33*a33 + qv) + b3*(b3*varA)
+		p00 += f.socQ
+		p01 = p01*f.decay[0] + b1*f.bSOCVar
+		p02 = p02*f.decay[1] + b2*f.bSOCVar
+		p03 = p03*f.decay[2] + b3*f.bSOCVar
+		u1, u2 := b1*f.currentVarA2, b2*f.currentVarA2
+		p11 = (p11*f.both[0][0] + f.branchV) + b1*u1
+		p12 = p12*f.both[0][1] + b2*u1
+		p13 = p13*f.both[0][2] + b3*u1
+		p22 = (p22*f.both[1][1] + f.branchV) + b2*u2
+		p23 = p23*f.both[1][2] + b3*u2
+		p33 = (p33*f.both[2][2] + f.branchV) + b3*(b3*f.currentVarA2)
 
 		// update
-		if !(z >= g.Lo && z < g.Hi) {
-			g = f.view.Segment(z)
-		}
 		t = z - g.Ref
 		tt = t * t
 		r0 := (g.R0.Y + t*g.R0.B) + tt*(g.R0.C+t*g.R0.D)
 		predicted := (g.OCV.Y + t*g.OCV.B) + tt*(g.OCV.C+t*g.OCV.D) - r0*i - (v1 + v2 + v3)
-		h := (g.OCV.B + t*(2*g.OCV.C+3*t*g.OCV.D)) - i*(g.R0.B+t*(2*g.R0.C+3*t*g.R0.D))
+		h := ((g.OCV.B - i*g.R0.B) + (t+t)*(g.OCV.C-i*g.R0.C)) + 3*tt*(g.OCV.D-i*g.R0.D)
 		c0 := h*p00 - (p01 + p02 + p03)
 		c1 := h*p01 - (p11 + p12 + p13)
 		c2 := h*p02 - (p12 + p22 + p23)
 		c3 := h*p03 - (p13 + p23 + p33)
-		s = h*c0 + ((varV + r0*r0*varA) - (c1 + c2 + c3))
+		s = h*c0 + ((f.voltageVarV2 + r0*r0*f.currentVarA2) - (c1 + c2 + c3))
 		is := 1 / s
-		y := volts - predicted
+		y = volts - predicted
 		e := is * y
 		z += c0 * e
 		v1 += c1 * e
@@ -95,9 +93,8 @@ func (f *EKF) run3(in *record.Readings, out *estimator.Estimate, k int) int {
 		p23 += w * (c2 * c3)
 		p33 += w * (c3 * c3)
 
-		if !(s > 0) || !(p00 >= 0) || !(p11 >= 0) || !(p22 >= 0) || !(p33 >= 0) ||
-			!(z*z+v1*v1+v2*v2+v3*v3+(p00+p11+p22+p33) < inf) {
-			lost = true
+		if !(s > 0) || !(p00 >= 0) || !(p11 >= 0) || !(p22 >= 0) || !(p33 >= 0) || !(y*y+z*z < inf) {
+			why = lost
 			break
 		}
 		limited := z
@@ -117,5 +114,5 @@ func (f *EKF) run3(in *record.Readings, out *estimator.Estimate, k int) int {
 	f.p[0][0], f.p[0][1], f.p[0][2], f.p[0][3] = p00, p01, p02, p03
 	f.p[1][1], f.p[1][2], f.p[1][3], f.p[2][2], f.p[2][3], f.p[3][3] = p11, p12, p13, p22, p23, p33
 	f.heldA = held
-	return f.leave(in, k, j, lost, s)
+	return f.leave(in, k, j, why, s, y)
 }
