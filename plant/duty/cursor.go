@@ -186,3 +186,45 @@ func (c *Cursor) over(i int, endS float64, exact bool) {
 	}
 	c.enter(i, &p.n.children[p.child], start)
 }
+
+// Currents tells at once what a current demand holds at consecutive samples: it
+// fills dst from sample number on, samples at number·periodS, for as long as
+// changes lie on samples, to within tolS, and belong to the present pass of one
+// leg. It returns how many samples it filled in. The cursor must stand at the
+// present sample's demand; it is left at the demand of the sample after the
+// last one filled in, or at one whose time is up there.
+func (c *Cursor) Currents(dst []float64, number int64, periodS, tolS float64) int {
+	if c.top < 0 || c.demand.Quantity != CurrentDemand {
+		return 0
+	}
+	at, k := c.at, c.k
+	value := c.value[:len(at)]
+	passS, capS, last := c.passS, c.capS, min(c.endS, c.capS)
+	n := 0
+	for n < len(dst) && k < len(at) {
+		next := float64(number+int64(n)+1) * periodS
+		end, more := last, false
+		if k+1 < len(at) {
+			if e := passS + at[k+1]; e < capS {
+				end, more = e, true
+			}
+		}
+		if end < next-tolS {
+			break
+		}
+		dst[n] = value[k]
+		n++
+		if end <= next+tolS {
+			if !more {
+				break
+			}
+			k++
+		}
+	}
+	if k != c.k {
+		c.k = k
+		c.load()
+	}
+	c.entered = -1
+	return n
+}
