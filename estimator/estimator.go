@@ -8,6 +8,7 @@ package estimator
 
 import (
 	"fmt"
+	"math"
 
 	"soctrial/plant/cell"
 	"soctrial/plant/record"
@@ -104,6 +105,20 @@ func (s *Setup) Compile() (*cell.Model, error) {
 	o := cell.AsBuilt(s.PeriodS)
 	o.Branches = s.Spec.Branches
 	return cell.Compile(s.Cell, o)
+}
+
+// Check returns an error when what the estimator is told is not a number, the
+// hysteresis lies outside [-1, 1] or the period is negative.
+func (s *Setup) Check() error {
+	switch {
+	case !(math.Abs(s.SOCStart) < math.Inf(1)):
+		return fmt.Errorf("estimator: told SOC is %g, allowed is a finite number", s.SOCStart)
+	case !(math.Abs(s.HysteresisStart) <= 1):
+		return fmt.Errorf("estimator: told hysteresis is %g, allowed is -1 to 1", s.HysteresisStart)
+	case !(s.PeriodS >= 0 && s.PeriodS < math.Inf(1)):
+		return fmt.Errorf("estimator: period is %g s, allowed is a finite number ≥ 0", s.PeriodS)
+	}
+	return nil
 }
 
 // Resetter is an Estimator that can begin another run in place, as new as

@@ -77,6 +77,18 @@ func TestCompile(t *testing.T) {
 	}
 }
 
+func TestToldValues(t *testing.T) {
+	nan := math.NaN()
+	for _, s := range []estimator.Setup{{SOCStart: nan}, {SOCStart: math.Inf(-1)}, {HysteresisStart: 1.5}, {HysteresisStart: nan}, {PeriodS: -1}, {PeriodS: math.Inf(1)}} {
+		if err := s.Check(); err == nil || !strings.Contains(err.Error(), "allowed") {
+			t.Errorf("%g, %g, %g s: error is %v", s.SOCStart, s.HysteresisStart, s.PeriodS, err)
+		}
+	}
+	if err := (&estimator.Setup{SOCStart: 0.5, HysteresisStart: -1, PeriodS: 0}).Check(); err != nil {
+		t.Error(err)
+	}
+}
+
 func TestLostErrorSaysWhere(t *testing.T) {
 	err := &estimator.LostError{Sample: 12, TimeS: 6, Cause: "state not finite: soc is NaN"}
 	if got := err.Error(); got != "lost at sample 12 (t = 6 s): state not finite: soc is NaN" {

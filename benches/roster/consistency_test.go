@@ -10,6 +10,8 @@ import (
 	"gonum.org/v1/gonum/stat/distuv"
 
 	"soctrial/estimator"
+	"soctrial/noise"
+	"soctrial/plant"
 	"soctrial/plant/cell"
 	"soctrial/plant/record"
 	"soctrial/plant/stream"
@@ -35,40 +37,31 @@ func consistentCell() *cell.Cell {
 	return c
 }
 
-// noisyRun is a run of the cell from a start drawn from the filter's own
-// P0, its readings noisy as the filter is told, and the true state.
-func noisyRun(seed uint64, reading record.CurrentReading) (in record.Readings, truth [][3]float64) {
-	start, current, voltage, course := stream.New(seed, "start"), stream.New(seed, "current"), stream.New(seed, "voltage"), stream.New(seed, "course")
-	m, err := cell.Compile(consistentCell(), cell.AsBuilt(1))
-	if err != nil {
-		panic(err)
+// noisyRun is a run of the cell from a start drawn from the filter's own P0,
+// through plant and sensors as noisy as the filter is told, and the true
+// states. The branches' are found from the true current by their closed form.
+func noisyRun(t *testing.T, seed uint64, reading record.CurrentReading) (in record.Readings, states [][3]float64) {
+	t.Helper()
+	start, course := stream.New(seed, "start"), stream.New(seed, "course")
+	currentA := make([]float64, samples)
+	for k := range currentA {
+		if currentA[k] = 6 * course.Normal(); k%30 != 0 {
+			currentA[k] = currentA[k-1]
+		}
 	}
-	var v cell.View
-	v.Bind(m, 25)
-	x := cell.State{SOC: 0.6 + socStd*start.Normal()}
-	x.BranchV[0], x.BranchV[1] = branchStdV*start.Normal(), branchStdV*start.Normal()
-	in = record.MakeReadings(samples)
-	in.PeriodS, in.CurrentReading = 1, reading
-	i, before := 0.0, 0.0
-	for k := range samples {
-		before = i
-		if k%30 == 0 {
-			i = 6 * course.Normal()
+	x := [3]float64{0.6 + socStd*start.Normal(), branchStdV * start.Normal(), branchStdV * start.Normal()}
+	sensors := noise.Sensors{SamplePeriodS: 1, Current: noise.Channel{Noise: currentStdA}, Voltage: noise.Channel{Noise: voltageStdV}, CurrentReading: reading}
+	c := consistentCell()
+	truth, in := follow(t, c, trace(currentA), sensors, seed, func(s *plant.Setup) { s.SOCStart, s.BranchStartV = x[0], x[1:] })
+	for k := range truth.TimeS {
+		x[0] = truth.SOC[k]
+		states = append(states, x)
+		for j, b := range c.Branches {
+			rise := -math.Expm1(-1 / b.TauS.Values[0][0])
+			x[1+j] += rise * (b.Ohm.Values[0][0]*truth.CurrentA[k] - x[1+j])
 		}
-		if k == 0 {
-			before = i
-		}
-		told := i
-		if reading == record.IntervalMean {
-			told = before
-		}
-		in.TimeS[k], in.TemperatureC[k] = float64(k), 25
-		in.CurrentA[k] = told + currentStdA*current.Normal()
-		in.VoltageV[k] = v.Voltage(&x, told) + voltageStdV*voltage.Normal()
-		truth = append(truth, [3]float64{x.SOC, x.BranchV[0], x.BranchV[1]})
-		v.Advance(&x, i, 1, m.CapacityAh)
 	}
-	return in, truth
+	return in, states
 }
 
 // honesty is what the runs say about a filter.
@@ -89,7 +82,7 @@ func judge(t *testing.T, reading record.CurrentReading, toldVoltageStdV float64)
 		if err := e.(estimator.Resetter).Reset(s); err != nil {
 			t.Fatal(err)
 		}
-		in, truth := noisyRun(seed, reading)
+		in, truth := noisyRun(t, seed, reading)
 		nis, nees, at := 0.0, 0.0, 0
 		out := estimator.MakeEstimate(1)
 		for k := range samples {

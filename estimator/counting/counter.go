@@ -44,6 +44,9 @@ func (c *counter) reset(kind string, s estimator.Setup) error {
 			return fmt.Errorf("counting: %s is %g, allowed is a finite number ≥ 0, or none", v.key, v.value)
 		}
 	}
+	if err := s.Check(); err != nil {
+		return err
+	}
 	m := c.model
 	same := s.Model == nil && c.setup.Model == nil && m != nil && c.setup.Cell == s.Cell &&
 		c.setup.PeriodS == s.PeriodS && c.setup.Spec.Branches == s.Spec.Branches

@@ -76,6 +76,9 @@ func (f *EKF) Reset(s estimator.Setup) error {
 	if err := validate(&s.Spec); err != nil {
 		return err
 	}
+	if err := s.Check(); err != nil {
+		return err
+	}
 	m, err := f.modelFor(&s)
 	if err != nil {
 		return fmt.Errorf("kalman: %w", err)

@@ -64,9 +64,11 @@ func (f *EKF) predict(currentA, dtS float64) {
 		for c := r; c <= n; c++ {
 			f.p[r][c] = f.p[r][c]*(a[r]*a[c]) + u*b[c]
 		}
-		f.p[r][r] += f.branchV
+		if r > 0 {
+			f.p[r][r] += f.branchV
+		}
 	}
-	f.p[0][0] += f.socVar - f.branchV
+	f.p[0][0] += f.socVar
 }
 
 // update folds in the voltage reading, NaN: none, and writes estimate k unless
