@@ -32,6 +32,9 @@ func (p *Plan) Validate() error {
 		return bad("vary", fmt.Sprintf("%d columns", len(p.Vary)),
 			fmt.Sprintf("at most %d in a Sobol draw; latin-hypercube takes any number", sobolDimensions))
 	}
+	if err := p.Score.Validate(); err != nil {
+		return err
+	}
 	for i := range p.Vary {
 		key := fmt.Sprintf("vary[%d]", i)
 		if err := p.Vary[i].validate(key, p.Draw); err != nil {
@@ -124,6 +127,21 @@ func (v *Vary) validateForm(key string, draw DrawKind) error {
 	}
 	if n := v.Triangular; n != nil && !(finite(n.Low, n.Mode, n.High) && n.Low <= n.Mode && n.Mode <= n.High && n.Low < n.High) {
 		return bad(key+".triangular", fmt.Sprintf("%+v", *n), "low ≤ mode ≤ high, low < high")
+	}
+	return nil
+}
+
+// Validate says which setting is not allowed.
+func (s ScoreSettings) Validate() error {
+	for _, x := range []struct {
+		key     string
+		value   float64
+		allowed Range
+	}{{"settle_after_s", s.SettleAfterS, atLeast(0)}, {"converge_band", s.ConvergeBand, Range{Low: 0, High: 1}},
+		{"converge_hold_s", s.ConvergeHoldS, atLeast(0)}, {"low_soc", s.LowSOC, Range{Low: 0, High: 1}}} {
+		if !x.allowed.Holds(x.value) {
+			return bad("score."+x.key, fmt.Sprint(x.value), (&Column{Kind: Number, Range: x.allowed}).Allowed())
+		}
 	}
 	return nil
 }

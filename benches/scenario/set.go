@@ -26,6 +26,9 @@ func (s *Set) Validate() error {
 			}
 		}
 	}
+	if err := s.Score.Validate(); err != nil {
+		return err
+	}
 	columns := Columns()
 	seen := make(map[int64]struct{}, len(s.Rows))
 	groups := map[string]bool{}
@@ -51,6 +54,21 @@ func (s *Set) Validate() error {
 		}
 	}
 	return nil
+}
+
+// Draws returns which draw each scenario belongs to, by its id, where the set
+// has a column label_draw: equal numbers are one draw, whatever they are. A
+// scenario without one is not in it.
+func (s *Set) Draws() map[int64]int64 {
+	draws := map[int64]int64{}
+	for i := range s.Rows {
+		for _, l := range s.Rows[i].Labels {
+			if l.Column == drawLabel && l.IsNumber && !math.IsNaN(l.Number) {
+				draws[s.Rows[i].ID] = int64(math.Float64bits(l.Number))
+			}
+		}
+	}
+	return draws
 }
 
 // validateNamed checks a row against the definitions it names.

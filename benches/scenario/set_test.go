@@ -29,7 +29,8 @@ func TestSetValidate(t *testing.T) {
 		"voltage_stuck_s: found 0": func(s *Set) {
 			s.Sensors["pack"] = &noise.Sensors{Voltage: noise.Channel{StuckShare: 0.1}}
 		},
-		"limit[0].group: found \"aged\"": func(s *Set) { s.Limits = []Limit{{Group: "aged"}} },
+		"score.converge_band: found 5, allowed is a number in [0, 1]": func(s *Set) { s.Score.ConvergeBand = 5 },
+		"limit[0].group: found \"aged\"":                              func(s *Set) { s.Limits = []Limit{{Group: "aged"}} },
 	} {
 		s := whole()
 		spoil(s)
@@ -44,5 +45,16 @@ func TestSetValidate(t *testing.T) {
 	s.Rows[5].TemperatureStartC = math.NaN()
 	if err := s.Validate(); err != nil {
 		t.Error(err)
+	}
+}
+
+// Rows that carry one number are one draw; a row without one is none of them.
+func TestDraws(t *testing.T) {
+	number := func(x float64) []Label { return []Label{{Column: "label_draw", Number: x, IsNumber: true}} }
+	s := &Set{Rows: []Row{{ID: 4, Labels: number(1)}, {ID: 5, Labels: number(1)}, {ID: 6, Labels: number(2.5)},
+		{ID: 7}, {ID: 8, Labels: number(math.NaN())}}}
+	d := s.Draws()
+	if len(d) != 3 || d[4] != d[5] || d[4] == d[6] {
+		t.Errorf("draws %v", d)
 	}
 }
