@@ -182,7 +182,6 @@ type paced struct {
 	bSOCVar float64       // times the current's variance
 	socVar  float64       // process variances of one step
 	branchV float64
-	socQ    float64 // whole variance a step adds to SOC
 }
 
 // pace makes a step of dtS ready.
@@ -210,7 +209,6 @@ func (f *EKF) pace(dtS float64) {
 	f.bSOC = -f.perA[0]
 	f.bSOCVar = f.bSOC * f.currentVarA2
 	f.socVar, f.branchV = f.socVarPerS*dtS, f.branchVarPerS*dtS
-	f.socQ = f.socVar + f.bSOC*f.bSOCVar
 }
 
 // begun counts samples samples whose last was at timeS.

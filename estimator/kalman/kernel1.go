@@ -46,9 +46,9 @@ func (f *EKF) run1(in *record.Readings, out *estimator.Estimate, k int) (next in
 		z = after
 		v1 = f.decay[0]*v1 + b1*held
 		held = i
-		p00 += f.socQ
-		p01 = p01*f.decay[0] + b1*f.bSOCVar
-		p11 = (p11*f.both[0][0] + f.branchV) + b1*(b1*f.currentVarA2)
+		p00 += f.socVar
+		p01 *= f.decay[0]
+		p11 = p11*f.both[0][0] + f.branchV
 
 		// update
 		t = z - g.Ref
@@ -58,7 +58,15 @@ func (f *EKF) run1(in *record.Readings, out *estimator.Estimate, k int) (next in
 		h := ((g.OCV.B - i*g.R0.B) + (t+t)*(g.OCV.C-i*g.R0.C)) + 3*tt*(g.OCV.D-i*g.R0.D)
 		c0 := h*p00 - p01
 		c1 := h*p01 - p11
-		s = h*c0 + ((f.voltageVarV2 + r0*r0*f.currentVarA2) - c1)
+		bh := h*f.bSOC - b1
+		ub := bh * f.currentVarA2
+		s = (h*c0 + ((f.voltageVarV2 + r0*r0*f.currentVarA2) - c1)) + ub*bh
+		c0 += f.bSOC * ub
+		c1 += b1 * ub
+		p00 += f.bSOC * f.bSOCVar
+		p01 += b1 * f.bSOCVar
+		u1 := b1 * f.currentVarA2
+		p11 += b1 * u1
 		is := 1 / s
 		y = volts - predicted
 		e := is * y

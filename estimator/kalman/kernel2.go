@@ -13,8 +13,9 @@ import (
 // was in, when the filter is lost and at the block's end.
 //
 // The loop is as long as its chain of dependent operations from one covariance
-// to the next: sums are ordered so that what is known last is added last, and
-// nothing is called, so that the state stays in registers.
+// to the next. So sums are ordered that what is known last is added last: the
+// input noise b bᵀ, which waits for SOC, joins P Hᵀ and S when they are there
+// but for it. And nothing is called, so that the state stays in registers.
 func (f *EKF) run2(in *record.Readings, out *estimator.Estimate, k int) (next int, why stop) {
 	cur := in.CurrentA[k:]
 	volt := in.VoltageV[k:][:len(cur)]
@@ -55,13 +56,12 @@ func (f *EKF) run2(in *record.Readings, out *estimator.Estimate, k int) (next in
 		v1 = f.decay[0]*v1 + b1*held
 		v2 = f.decay[1]*v2 + b2*held
 		held = i
-		p00 += f.socQ
-		p01 = p01*f.decay[0] + b1*f.bSOCVar
-		p02 = p02*f.decay[1] + b2*f.bSOCVar
-		u1 := b1 * f.currentVarA2
-		p11 = (p11*f.both[0][0] + f.branchV) + b1*u1
-		p12 = p12*f.both[0][1] + b2*u1
-		p22 = (p22*f.both[1][1] + f.branchV) + b2*(b2*f.currentVarA2)
+		p00 += f.socVar
+		p01 *= f.decay[0]
+		p02 *= f.decay[1]
+		p11 = p11*f.both[0][0] + f.branchV
+		p12 *= f.both[0][1]
+		p22 = p22*f.both[1][1] + f.branchV
 
 		// update
 		t = z - g.Ref
@@ -72,7 +72,20 @@ func (f *EKF) run2(in *record.Readings, out *estimator.Estimate, k int) (next in
 		c0 := h*p00 - (p01 + p02)
 		c1 := h*p01 - (p11 + p12)
 		c2 := h*p02 - (p12 + p22)
-		s = h*c0 + ((f.voltageVarV2 + r0*r0*f.currentVarA2) - (c1 + c2))
+		bh := h*f.bSOC - (b1 + b2)
+		ub := bh * f.currentVarA2
+		s = (h*c0 + ((f.voltageVarV2 + r0*r0*f.currentVarA2) - (c1 + c2))) + ub*bh
+		c0 += f.bSOC * ub
+		c1 += b1 * ub
+		c2 += b2 * ub
+		p00 += f.bSOC * f.bSOCVar
+		p01 += b1 * f.bSOCVar
+		p02 += b2 * f.bSOCVar
+		u1 := b1 * f.currentVarA2
+		p11 += b1 * u1
+		p12 += b2 * u1
+		u2 := b2 * f.currentVarA2
+		p22 += b2 * u2
 		is := 1 / s
 		y = volts - predicted
 		e := is * y
