@@ -316,7 +316,8 @@ func (a *Accumulator) Metrics() Metrics {
 		DurationS:      a.duration,
 		LimitedS:       a.limited,
 	}
-	endS := a.lastS + a.periodS // the last sample stands for one period
+	m.SOCP95Abs = min(m.SOCP95Abs, m.SOCMaxAbs) // a bin's parts may lie above its only size
+	endS := a.lastS + a.periodS                 // the last sample stands for one period
 	if math.IsNaN(m.DurationS) {
 		m.DurationS = 0
 		if a.samples > 0 {

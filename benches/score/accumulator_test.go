@@ -241,6 +241,18 @@ func TestNothingAddedIsNothing(t *testing.T) {
 	}
 }
 
+// A perfect estimate has a percentile of 0, not of half a bin.
+func TestPercentileIsAtMostTheLargest(t *testing.T) {
+	truth, est := plant.MakeTruth(100), estimator.MakeEstimate(100)
+	truth.PeriodS = 1
+	var a Accumulator
+	a.Reset(Settings{})
+	a.Add(&truth, &est)
+	if got := a.Metrics().SOCP95Abs; got != 0 {
+		t.Errorf("soc_p95_abs of no error is %g", got)
+	}
+}
+
 // A run keeps nothing from the one before, whatever that one touched.
 func TestResetForgets(t *testing.T) {
 	var used, fresh Accumulator

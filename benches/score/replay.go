@@ -24,7 +24,7 @@ func (a *Accumulator) AddReference(timeS, socTrue []float64, est *estimator.Esti
 		if a.samples == 0 {
 			a.startS = t
 		}
-		a.settle(t)
+		a.weighPending(t)
 		e := est.SOC[i] - socTrue[i]
 		settled := t >= a.startS+a.set.SettleAfterS
 		scored := !math.IsNaN(socTrue[i])
@@ -46,8 +46,8 @@ func (a *Accumulator) AddReference(timeS, socTrue []float64, est *estimator.Esti
 	}
 }
 
-// settle weighs the sample that waits, now that the next one's time is known.
-func (a *Accumulator) settle(nextS float64) {
+// weighPending weighs the sample that waits, now that the next one's time is known.
+func (a *Accumulator) weighPending(nextS float64) {
 	if a.pending.waits {
 		a.weigh(nextS - a.pending.timeS)
 	}

@@ -23,7 +23,7 @@ type Metrics struct {
 	SOCMAE         float64 // soc_mae: mean of |error|
 	SOCBias        float64 // soc_bias: mean error
 	SOCMaxAbs      float64 // soc_max_abs: largest |error|
-	SOCP95Abs      float64 // soc_p95_abs: 95th percentile of |error| over samples, from a histogram of 5e-5
+	SOCP95Abs      float64 // soc_p95_abs: 95th percentile of |error| over samples (in replay too, without weights), from a histogram of 5e-5, at most soc_max_abs
 	SettledRMSE    float64 // settled_rmse: soc_rmse over samples with t ≥ settle_after_s
 	SettledMaxAbs  float64 // settled_max_abs: soc_max_abs over samples with t ≥ settle_after_s
 	ConvergeS      float64 // converge_s: first sample time t with |error| ≤ converge_band at every sample in [t, t + converge_hold_s], the run lasting to its end; s
