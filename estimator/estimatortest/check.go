@@ -324,6 +324,11 @@ func absurd(t *testing.T, s *subject) {
 				t.Errorf("%g A, %g V: SOC[%d] is %v (free %v)", what.a, what.v, k, out.SOC[k], out.SOCFree[k])
 				break
 			}
+			for name, col := range columns(&out) {
+				if math.IsInf(col[k], 0) {
+					t.Errorf("%g A, %g V: %s[%d] is %v", what.a, what.v, name, k, col[k])
+				}
+			}
 		}
 	}
 }

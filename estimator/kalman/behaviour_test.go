@@ -187,26 +187,42 @@ func TestLongRun(t *testing.T) {
 }
 
 func TestLostOnNegativeVariance(t *testing.T) {
-	setup := estimator.Setup{Spec: ekfSpec(), Cell: straightCell(1, 0.01, [2]float64{0.01, 30}), SOCStart: 0.5, PeriodS: 1}
-	for name, p := range map[string][3]float64{"soc": {-1, 0, 1e-4}, "branch_1_v": {1e-4, 0, -1}, "innovation": {1e-2, 1, 1e-2}} {
-		for _, period := range []float64{1, 0} {
-			e := build(t, setup)
-			// branches, samples, time, current, temperature, hysteresis, mean, covariance
-			if err := e.UnmarshalBinary(estimator.PackState("ekf", []float64{1, 10, 9, 0, 25, 0, 0.5, 0, p[0], p[1], p[2]})); err != nil {
-				t.Fatal(err)
-			}
-			in := readings([]float64{1, 1}, []float64{3.3, 3.3}, nil)
-			in.PeriodS, in.TimeS[0], in.TimeS[1] = period, 10, 11
-			out := estimator.MakeEstimate(2)
-			var lost *estimator.LostError
-			if err := e.Advance(&in, &out); !errors.As(err, &lost) {
-				t.Fatalf("%s: error is %v, want a LostError", name, err)
-			}
-			if lost.Sample != 10 || lost.TimeS != 10 || !strings.Contains(lost.Cause, "covariance not positive") {
-				t.Errorf("%s: %v, want sample 10 at 10 s and the covariance", name, lost)
-			}
-			if _, err := e.MarshalBinary(); err == nil {
-				t.Errorf("%s: a lost filter's state was saved", name)
+	for n := 1; n <= 3; n++ {
+		setup := estimator.Setup{Spec: ekfSpec(), Cell: straightCell(1, 0.01, [][2]float64{{0.01, 30}, {0.02, 300}, {0.005, 4}}[:n]...), SOCStart: 0.5, PeriodS: 1}
+		for bad := 0; bad <= n; bad++ {
+			for _, period := range []float64{1, 0} { // kernel, general
+				// branches, samples, time, current, temperature, hysteresis, mean, covariance
+				state := []float64{float64(n), 10, 9, 0, 25, 0}
+				state = append(state, append([]float64{0.5}, make([]float64, n)...)...)
+				for r := 0; r <= n; r++ {
+					for c := r; c <= n; c++ {
+						v := 0.0
+						if r == c {
+							v = 1e-2
+						}
+						if r == c && r == bad {
+							v = -1e-6 // too little to turn the innovation's variance
+						}
+						state = append(state, v)
+					}
+				}
+				e := build(t, setup)
+				if err := e.UnmarshalBinary(estimator.PackState("ekf", state)); err != nil {
+					t.Fatal(err)
+				}
+				in := readings([]float64{1, 1}, []float64{3.3, 3.3}, nil)
+				in.PeriodS, in.TimeS[0], in.TimeS[1] = period, 10, 11
+				out := estimator.MakeEstimate(2)
+				var lost *estimator.LostError
+				if err := e.Advance(&in, &out); !errors.As(err, &lost) {
+					t.Fatalf("%d branches, variance %d, period %g: error is %v, want a LostError", n, bad, period, err)
+				}
+				if lost.Sample != 10 || lost.TimeS != 10 || !strings.Contains(lost.Cause, "covariance not positive: variance of "+e.(estimator.Inspectable).StateNames()[bad]) {
+					t.Errorf("%d branches, variance %d, period %g: %v, want sample 10 at 10 s and what is negative", n, bad, period, lost)
+				}
+				if _, err := e.MarshalBinary(); err == nil {
+					t.Error("a lost filter's state was saved")
+				}
 			}
 		}
 	}
