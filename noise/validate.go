@@ -8,11 +8,25 @@ import (
 	"soctrial/plant/record"
 )
 
+// ValueError says that one value of a sensor set is not allowed; its key is
+// that of the sensors file, e.g. "current.noise_a".
+type ValueError struct{ Key, Found, Allowed string }
+
+// Error implements error.
+func (e *ValueError) Error() string { return e.Key + ": " + e.Found + ", allowed is " + e.Allowed }
+
+// KeyPath returns the key the error belongs to.
+func (e *ValueError) KeyPath() string { return e.Key }
+
+func bad(key string, found any, allowed string) error {
+	return &ValueError{key, fmt.Sprint(found), allowed}
+}
+
 // Validate returns an error for the first value out of range, by its key in a
 // sensors file, with what was found and what is allowed.
 func (s *Sensors) Validate() error {
 	if !(s.SamplePeriodS > 0) || math.IsInf(s.SamplePeriodS, 0) {
-		return fmt.Errorf("sample_period_s: %v, allowed is > 0 and finite", s.SamplePeriodS)
+		return bad("sample_period_s", s.SamplePeriodS, "> 0 and finite")
 	}
 	for _, ch := range []struct {
 		name, unit string
@@ -28,7 +42,7 @@ func (s *Sensors) Validate() error {
 	case "", record.Instant, record.IntervalMean:
 		return nil
 	}
-	return fmt.Errorf("current.reading: %q, allowed is %q or %q", s.CurrentReading, record.Instant, record.IntervalMean)
+	return bad("current.reading", fmt.Sprintf("%q", s.CurrentReading), fmt.Sprintf("%q or %q", record.Instant, record.IntervalMean))
 }
 
 // validate checks one channel, whose quantity has this unit in key names.
@@ -58,10 +72,10 @@ func (c *Channel) validate(name, unit string) error {
 		{"stuck_share", c.StuckShare, share},
 		{"stuck_s", c.StuckS, positive},
 	} {
-		bad := math.IsNaN(v.value) || math.IsInf(v.value, 0) ||
+		outside := math.IsNaN(v.value) || math.IsInf(v.value, 0) ||
 			v.bound != finite && v.value < 0 || v.bound == share && v.value >= 1
-		if bad {
-			return fmt.Errorf("%s.%s: %v, allowed is %s", name, strings.Replace(v.key, "%", unit, 1), v.value, allowed[v.bound])
+		if outside {
+			return bad(name+"."+strings.Replace(v.key, "%", unit, 1), v.value, allowed[v.bound])
 		}
 	}
 	for _, f := range []struct {
@@ -69,11 +83,11 @@ func (c *Channel) validate(name, unit string) error {
 		share, length float64
 	}{{"dropout", c.DropoutShare, c.DropoutS}, {"stuck", c.StuckShare, c.StuckS}} {
 		if f.share > 0 && f.length == 0 {
-			return fmt.Errorf("%s.%s_s: 0, allowed is > 0 where %s_share is given", name, f.key, f.key)
+			return bad(name+"."+f.key+"_s", 0, fmt.Sprintf("> 0 where %s_share is given", f.key))
 		}
 	}
 	if c.Every < 0 {
-		return fmt.Errorf("%s.every: %d, allowed is ≥ 1", name, c.Every)
+		return bad(name+".every", c.Every, "≥ 1")
 	}
 	return nil
 }
