@@ -2,6 +2,7 @@ package roster_test
 
 import (
 	"encoding/csv"
+	"fmt"
 	"math"
 	"os"
 	"strconv"
@@ -10,6 +11,7 @@ import (
 
 	"gonum.org/v1/gonum/stat/distuv"
 
+	"soctrial/benches/define"
 	"soctrial/benches/roster"
 	"soctrial/estimator"
 	"soctrial/plant/cell"
@@ -78,15 +80,25 @@ func riccatiCell(branches int) *cell.Cell {
 		Branches: []cell.Branch{{Ohm: cell.Constant(0.008), TauS: &tau1}, {Ohm: cell.Constant(0.012), TauS: &tau2}}[:branches]}
 }
 
-// riccatiSpec is the estimator of a case: dt is 1 s, so a density is the square
-// root of Q's diagonal.
-func riccatiSpec(c steadyCase, currentStdA float64) estimator.Spec {
+// riccatiSpec reads the estimator file of a case: dt is 1 s, so a density is
+// the square root of Q's diagonal.
+func riccatiSpec(t *testing.T, c steadyCase, currentStdA float64) estimator.Spec {
+	t.Helper()
 	q0, qv := c["Q"][[2]int{0, 0}], c["Q"][[2]int{1, 1}]
 	if currentStdA > 0 { // Q is the current's, but for this on the diagonal
 		q0, qv = 1e-14, 1e-14
 	}
-	return estimator.Spec{Kind: "ekf", Branches: -1, SOCStd: 0.1, BranchStdV: 0.01, SOCStdPerSqrtS: math.Sqrt(q0),
-		BranchStdVPerSqrtS: math.Sqrt(qv), VoltageStdV: math.Sqrt(c["R"][[2]int{0, 0}]), CurrentStdA: currentStdA}
+	text := fmt.Sprintf(`format = "soctrial/estimator/1"
+kind = "ekf"
+start = { soc_std = 0.1, branch_std_v = 0.01 }
+process = { soc_std_per_sqrt_s = %.17e, branch_std_v_per_sqrt_s = %.17e }
+measurement = { voltage_std_v = %.17e, current_std_a = %.17e }
+`, math.Sqrt(q0), math.Sqrt(qv), math.Sqrt(c["R"][[2]int{0, 0}]), currentStdA)
+	spec, err := define.Estimator("riccati.toml", []byte(text), define.Openers{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	return *spec
 }
 
 func newEstimator(t *testing.T, s estimator.Setup) estimator.Estimator {
@@ -125,7 +137,7 @@ func TestRiccatiSteadyState(t *testing.T) {
 		t.Run(name, func(t *testing.T) {
 			want := cases[name]
 			n := len(want["K"])
-			e := newEstimator(t, estimator.Setup{Spec: riccatiSpec(want, currentStdA), Cell: riccatiCell(n - 1), SOCStart: 0.5, PeriodS: 1})
+			e := newEstimator(t, estimator.Setup{Spec: riccatiSpec(t, want, currentStdA), Cell: riccatiCell(n - 1), SOCStart: 0.5, PeriodS: 1})
 			seen := e.(estimator.Inspectable)
 			for range 200 {
 				advance(t, e, block(1000, 0, 3.3))
@@ -170,8 +182,7 @@ func relative(t *testing.T, what string, r, c int, got, want float64) {
 // bound (Tichavský, Muravchik, Nehorai 1998), which a linear system's Kalman
 // filter attains: pcrb_linear_gaussian.csv, to its tolerance of 1e-7.
 func TestCovariancesAndBoundStepByStep(t *testing.T) {
-	spec := riccatiSpec(steadyCases(t)["two_rc_cell_diagonal_q"], 0)
-	spec.SOCStd, spec.BranchStdV = 0.1, 0.01
+	spec := riccatiSpec(t, steadyCases(t)["two_rc_cell_diagonal_q"], 0)
 	e := newEstimator(t, estimator.Setup{Spec: spec, Cell: riccatiCell(2), SOCStart: 0.5, PeriodS: 1})
 	p := make([]float64, 9)
 	rows := table(t, "pcrb_linear_gaussian.csv")
@@ -211,9 +222,10 @@ func TestChiSquareQuantiles(t *testing.T) {
 	}
 }
 
+// What an estimator file may name is what there is.
 func TestKinds(t *testing.T) {
-	if got := strings.Join(roster.Kinds(), " "); got != "ekf coulomb rest-ocv" {
-		t.Errorf("kinds are %s", got)
+	if got := strings.Join(roster.Kinds(), " "); got != "ekf coulomb rest-ocv" || got != strings.Join(define.EstimatorKinds(), " ") {
+		t.Errorf("kinds are %s, files may name %q", got, define.EstimatorKinds())
 	}
 	for _, kind := range roster.Kinds() {
 		s := estimator.Spec{Kind: kind, Branches: -1, VoltageStdV: 0.004, RestCurrentBelowA: 0.1, RestAfterS: 60}
