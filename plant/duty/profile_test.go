@@ -1,0 +1,261 @@
+package duty_test
+
+import (
+	"encoding/csv"
+	"math"
+	"os"
+	"strconv"
+	"testing"
+
+	"soctrial/plant/duty"
+	"soctrial/testdata"
+)
+
+var nan = math.NaN()
+
+func leg(kind duty.Kind) duty.Leg {
+	return duty.Leg{Kind: kind, DurationS: nan, UntilSOC: nan, UntilVoltageV: nan, UntilCurrentA: nan, UntilCRate: nan, CurrentA: nan,
+		CRate: nan, PowerW: nan, VoltageV: nan, PulseS: nan, RestS: nan, ReturnRatio: nan, SOCStep: nan, StepCRate: nan, StepRestS: nan, PeakPowerW: nan}
+}
+
+func profile(name string) duty.Leg {
+	l := leg(duty.Profile)
+	l.ProfileName = name
+	return l
+}
+
+// step is one demand as a cursor gives it.
+type step struct {
+	q           duty.Quantity
+	value       float64
+	fromS, endS float64
+}
+
+// walk lists every demand of a duty without stops.
+func walk(t testing.TB, d *duty.Duty, capacityAh float64) []step {
+	t.Helper()
+	p, err := duty.Compile(d, capacityAh)
+	if err != nil {
+		t.Fatal(err)
+	}
+	var out []step
+	at := 0.0
+	for c := p.Start(); !c.Done(); c.Next() {
+		m := c.Demand()
+		out = append(out, step{m.Quantity, m.Value, at, m.EndS})
+		at = m.EndS
+	}
+	return out
+}
+
+func column(t testing.TB, path string, name string) []float64 {
+	t.Helper()
+	f, err := os.Open(path)
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer f.Close()
+	r := csv.NewReader(f)
+	r.FieldsPerRecord = -1
+	rows, err := r.ReadAll()
+	if err != nil {
+		t.Fatal(err)
+	}
+	for c, h := range rows[0] {
+		if h != name {
+			continue
+		}
+		var out []float64
+		for _, row := range rows[1:] {
+			v, err := strconv.ParseFloat(row[c], 64)
+			if err != nil {
+				t.Fatal(err)
+			}
+			out = append(out, v)
+		}
+		return out
+	}
+	t.Fatalf("%s has no column %q", path, name)
+	return nil
+}
+
+// The Dynamic Stress Test against its table (USABC Rev 2; testdata): steps,
+// durations and powers, discharge turned positive; 360 s, a mean of exactly
+// 12.5 % of the peak, charge a sixth of discharge, step 15 at full power.
+func TestDynamicStressTest(t *testing.T) {
+	path := testdata.Reference(t, "usabc_dst_steps.csv")
+	durations, percent := column(t, path, "duration_s"), column(t, path, "power_percent_of_peak_discharge_negative")
+	l := profile("dst")
+	l.PeakPowerW = 40
+	steps := walk(t, &duty.Duty{Legs: []duty.Leg{l}}, 5)
+	if len(steps) != 20 || len(durations) != 20 {
+		t.Fatalf("%d steps, %d in the table", len(steps), len(durations))
+	}
+	var sum, charged, discharged float64
+	for k, s := range steps {
+		if s.q != duty.PowerDemand || math.Abs(s.endS-s.fromS-durations[k]) > 1e-12 || math.Abs(s.value+percent[k]/100*40) > 1e-12 {
+			t.Errorf("step %d: %+v, table %g s at %g %%", k+1, s, durations[k], percent[k])
+		}
+		e := s.value * (s.endS - s.fromS)
+		sum += e
+		if e < 0 {
+			charged -= e
+		} else {
+			discharged += e
+		}
+	}
+	if end := steps[19].endS; end != 360 || math.Abs(sum/360-0.125*40) > 1e-12 || math.Abs(charged/discharged-1.0/6) > 1e-12 {
+		t.Errorf("%g s, mean %g W, charge over discharge %g", end, sum/360, charged/discharged)
+	}
+	if steps[14].value != 40 {
+		t.Errorf("step 15 is %g W, want the full 40 W of discharge", steps[14].value)
+	}
+}
+
+// The driving cycle against the regulation's operations at each second, its
+// distance, duration and top speed (UN R83; testdata).
+func TestNEDC(t *testing.T) {
+	timeS, speed := duty.NEDC()
+	kmh := column(t, testdata.Reference(t, "cycle_nedc_1hz.csv"), "speed_kmh")
+	if len(speed) != 1181 || len(kmh) != 1181 || timeS[1180] != 1180 {
+		t.Fatalf("%d speeds to %g s, %d in the table", len(speed), timeS[len(timeS)-1], len(kmh))
+	}
+	distance, top := 0.0, 0.0
+	for k, v := range speed {
+		if math.Abs(v*3.6-kmh[k]) > 5e-5 {
+			t.Fatalf("%d s: %g km/h, table %g", k, v*3.6, kmh[k])
+		}
+		if k > 0 {
+			distance += (v + speed[k-1]) / 2
+		}
+		top = max(top, v*3.6)
+	}
+	if math.Abs(distance-11007)/11007 > 1e-3 || math.Abs(top-120) > 1e-9 { // published 11.007 km, within 0.1 %
+		t.Errorf("%g m, %g km/h", distance, top)
+	}
+}
+
+// The hybrid pulses: durations and ratios from DOE/ID-11069 and ISO 12405
+// (testdata).
+func TestHybridPulses(t *testing.T) {
+	path := testdata.Reference(t, "hppc_pulse_profiles.csv")
+	durations, shares := column(t, path, "duration_s"), column(t, path, "relative_current_discharge_positive")
+	var steps []step
+	for _, name := range []string{"hppc", "iso12405-power-pulse"} {
+		l := profile(name)
+		l.CRate = 2
+		steps = append(steps, walk(t, &duty.Duty{Legs: []duty.Leg{l}}, 5)...)
+	}
+	if len(steps) != len(durations) {
+		t.Fatalf("%d steps, %d in the table", len(steps), len(durations))
+	}
+	for k, s := range steps {
+		if s.endS-s.fromS != durations[k] || s.value != shares[k]*10 {
+			t.Errorf("step %d: %+v, table %g s at %g", k, s, durations[k], shares[k])
+		}
+	}
+}
+
+// The published test: pulses at each tenth of the capacity, an hour's rest
+// before each (sequence rules in testdata).
+func TestHybridPulseTest(t *testing.T) {
+	l := leg(duty.Pulses)
+	l.CRate, l.PulseS, l.RestS, l.Count, l.ReturnRatio = 1, 10, 40, 9, 0.75
+	l.SOCStep, l.StepCRate, l.StepRestS = 0.1, 1.0/3, 3600
+	steps := walk(t, &duty.Duty{Legs: []duty.Leg{l}}, 5)
+	var moved float64
+	for _, s := range steps {
+		if math.Abs(s.value-5.0/3) < 1e-12 {
+			moved += s.value * (s.endS - s.fromS) / 3600 / 5
+		}
+	}
+	if math.Abs(moved-0.8) > 1e-12 { // between nine groups lie eight steps
+		t.Errorf("steps move %g of the capacity", moved)
+	}
+	if end := steps[len(steps)-1].endS; math.Abs(end-(9*100+8*(0.1*3*3600+3600))) > 1e-9 {
+		t.Errorf("lasts %g s", end)
+	}
+}
+
+// Published driving schedules read in place: duration, distance and top speed
+// against the published figures, and what of the kinetic energy is left over a
+// stop-to-stop cycle (none) and of the drag.
+func TestPublishedSpeedTraces(t *testing.T) {
+	for _, c := range []struct {
+		file, unit string
+		toMps      float64
+		distanceM  float64
+	}{
+		{"cycle_udds_1hz.csv", "speed_mph", 0.44704, 7.45 * 1609.344},
+		{"cycle_hwfet_1hz.csv", "speed_mph", 0.44704, 10.26 * 1609.344},
+		{"cycle_us06_1hz.csv", "speed_mph", 0.44704, 8.007 * 1609.344},
+		{"cycle_wltc_class3b_1hz.csv", "speed_kmh", 1 / 3.6, 23266},
+	} {
+		t.Run(c.file, func(t *testing.T) {
+			path := testdata.Shared(t, "reference/traces/"+c.file)
+			l := leg(duty.Speed)
+			l.TimeS = column(t, path, "time_s")
+			distance := 0.0
+			for k, v := range column(t, path, c.unit) {
+				l.SpeedMps = append(l.SpeedMps, v*c.toMps)
+				if k > 0 {
+					distance += (l.SpeedMps[k] + l.SpeedMps[k-1]) / 2
+				}
+			}
+			if math.Abs(distance-c.distanceM)/c.distanceM > 1e-3 {
+				t.Errorf("%g m, published %g", distance, c.distanceM)
+			}
+			energyOf(t, l)
+		})
+	}
+	l := leg(duty.Speed)
+	l.TimeS, l.SpeedMps = duty.NEDC()
+	energyOf(t, l)
+}
+
+// energyOf drives a vehicle of nothing but mass over a cycle that begins and
+// ends standing: what it took comes back. With drag, the rest is the integral
+// of the drag.
+func energyOf(t *testing.T, l duty.Leg) {
+	t.Helper()
+	v := duty.Vehicle{MassKg: 1200, RotatingMassKg: 60, AirDensityKgPerM3: 1.2, DriveEfficiency: 1, RegenerationEfficiency: 1, Series: 100, Parallel: 2}
+	sum := func() (net, driven float64) {
+		l.Vehicle = &v
+		for _, s := range walk(t, &duty.Duty{Legs: []duty.Leg{l}}, 5) {
+			e := s.value * (s.endS - s.fromS) * 200
+			net += e
+			driven += math.Max(e, 0)
+		}
+		return net, driven
+	}
+	if net, driven := sum(); math.Abs(net) > 1e-9*driven || driven < 1e5 {
+		t.Errorf("kinetic energy: %g J left of %g J", net, driven)
+	}
+	v.DragAreaM2 = 0.6
+	want := 0.0
+	for k := 1; k < len(l.TimeS); k++ {
+		mean := (l.SpeedMps[k] + l.SpeedMps[k-1]) / 2
+		want += 0.5 * 1.2 * 0.6 * mean * mean * mean * (l.TimeS[k] - l.TimeS[k-1])
+	}
+	if net, _ := sum(); math.Abs(net-want) > 1e-9*want {
+		t.Errorf("drag: %g J, want %g", net, want)
+	}
+}
+
+// Road load at steady speed, by hand: m g (c_r cos + sin) + drag, through the
+// drive, shared by the cells.
+func TestRoadLoadAtSteadySpeed(t *testing.T) {
+	v := duty.Vehicle{MassKg: 1000, RotatingMassKg: 50, RollingCoefficient: 0.01, DragAreaM2: 0.5, AirDensityKgPerM3: 1.2, Slope: 0.05,
+		DriveEfficiency: 0.9, RegenerationEfficiency: 0.6, AuxiliaryW: 300, Series: 10, Parallel: 2}
+	angle := math.Atan(0.05)
+	force := 1000*9.80665*(0.01*math.Cos(angle)+math.Sin(angle)) + 0.5*1.2*0.5*100
+	if got, want := v.PowerW(10, 10, 1), (force*10/0.9+300)/20; math.Abs(got-want) > 1e-9 {
+		t.Errorf("%g W a cell, want %g", got, want)
+	}
+	if got := v.PowerW(0, 0, 1); got != 15 {
+		t.Errorf("standing: %g W, want the auxiliaries' 15", got)
+	}
+	if got, want := v.PowerW(10, 0, 2), (0.6*(-1050*100/4.0+(1000*9.80665*(0.01*math.Cos(angle)+math.Sin(angle))+0.5*1.2*0.5*25)*5)+300)/20; math.Abs(got-want) > 1e-9 {
+		t.Errorf("braking: %g W, want %g", got, want)
+	}
+}
