@@ -131,7 +131,6 @@ func resultSpecs() []columnSpec {
 func putResults(w io.Writer, rows []score.Result, meta map[string]string) error {
 	t := newTableWriter(w, "results", resultSpecs(), meta)
 	metrics := score.MetricNames()
-	const groupRows = 1 << 17
 	for from := 0; from < len(rows); from += groupRows {
 		part := rows[from:min(from+groupRows, len(rows))]
 		numbers := make([][]float64, len(part))

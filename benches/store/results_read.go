@@ -6,7 +6,6 @@ import (
 	"strconv"
 	"strings"
 
-	"soctrial/benches/scenario"
 	"soctrial/benches/score"
 )
 
@@ -36,7 +35,7 @@ func readResults(t *table) ([]score.Result, ResultsMeta, error) {
 	}
 	columns := make([]*values, 0, len(resultSpecs()))
 	for _, spec := range resultSpecs() {
-		v, err := t.need(spec.name, wantedKind(spec), spec.node.Optional())
+		v, err := t.need(spec.name, kindOf(spec), spec.node.Optional())
 		if err != nil {
 			return nil, meta, err
 		}
@@ -84,56 +83,6 @@ func metricFields(m *score.Metrics) [19]*float64 {
 	return [...]*float64{&m.SOCRMSE, &m.SOCMAE, &m.SOCBias, &m.SOCMaxAbs, &m.SOCP95Abs, &m.SettledRMSE,
 		&m.SettledMaxAbs, &m.ConvergeS, &m.EndError, &m.LowSOCMaxAbs, &m.SOCStepMax, &m.VoltageRMSEV,
 		&m.NISMean, &m.NISInBandShare, &m.NEESMean, &m.Coverage95, nil, &m.DurationS, &m.LimitedS}
-}
-
-func wantedKind(c columnSpec) scenario.Kind {
-	switch newKind := c.node.Type().Kind(); newKind.String() {
-	case "INT64":
-		return scenario.Int
-	case "BYTE_ARRAY":
-		return scenario.Text
-	}
-	return scenario.Number
-}
-
-// need reads a column that must be there, as values of one kind: whole
-// numbers may come as doubles and the other way round.
-func (t *table) need(name string, kind scenario.Kind, nulls bool) (*values, error) {
-	f, ok := t.find(name)
-	if !ok {
-		return nil, t.errf("column %q is missing (this file has %s)", name, strings.Join(t.names(), ", "))
-	}
-	v, err := t.readAll(f)
-	if err != nil {
-		return nil, err
-	}
-	if (kind == scenario.Text) != (v.kind == scenario.Text) {
-		return nil, t.errf("column %q holds %s; %ss are needed", name, f.describe(), kind)
-	}
-	for i := range v.null {
-		if v.null[i] && !nulls {
-			return nil, t.errf("column %q, row %d: found null, a %s is needed", name, i+1, kind)
-		}
-	}
-	switch {
-	case kind == v.kind:
-	case kind == scenario.Number:
-		v.nums = make([]float64, len(v.ints))
-		for i, n := range v.ints {
-			v.nums[i] = float64(n)
-		}
-		v.kind, v.ints = kind, nil
-	default:
-		v.ints = make([]int64, len(v.nums))
-		for i, x := range v.nums {
-			if x != math.Trunc(x) || math.Abs(x) > 1<<53 {
-				return nil, t.errf("column %q, row %d: found %g, a whole number is needed", name, i+1, x)
-			}
-			v.ints[i] = int64(x)
-		}
-		v.kind, v.nums = kind, nil
-	}
-	return v, nil
 }
 
 // decode reads the metadata of results.

@@ -113,8 +113,8 @@ func TestSetRoundTrip(t *testing.T) {
 }
 
 func TestSetBeyondOneRowGroup(t *testing.T) {
-	s := sweeperSet(1<<17 + 5)
-	s.Rows[1<<17].Override[3] = 0.25
+	s := sweeperSet(groupRows + 5)
+	s.Rows[groupRows].Override[3] = 0.25
 	s.Rows[7].Group = "aged"
 	path := filepath.Join(t.TempDir(), "set.parquet")
 	if err := WriteSet(path, s); err != nil {

@@ -35,6 +35,11 @@ func writeSet(d disk, path string, s *scenario.Set) error {
 	if err := checkSet(s.Rows, s.Texts); err != nil {
 		return fmt.Errorf("store: writing %s: %w", path, err)
 	}
+	for i := range s.Rows {
+		if err := s.Rows[i].Validate(); err != nil {
+			return fmt.Errorf("store: writing %s: row %d (scenario_id %d): %w", path, i+1, s.Rows[i].ID, err)
+		}
+	}
 	labels, err := labelColumns(s.Rows)
 	if err != nil {
 		return fmt.Errorf("store: writing %s: %w", path, err)
@@ -68,7 +73,6 @@ func putSet(w io.Writer, rows []scenario.Row, labels []setColumn, meta map[strin
 		specs[i] = c.spec
 	}
 	t := newTableWriter(w, "set", specs, meta)
-	const groupRows = 1 << 17
 	for from := 0; from < len(rows); from += groupRows {
 		part := rows[from:min(from+groupRows, len(rows))]
 		for c := range cols {

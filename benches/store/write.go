@@ -85,6 +85,9 @@ type orderedField struct {
 func (f orderedField) Name() string                      { return f.name }
 func (f orderedField) Value(reflect.Value) reflect.Value { return reflect.Value{} }
 
+// groupRows is how many rows of a set or of results stand in one row group.
+const groupRows = 1 << 14
+
 // tableWriter writes flat columns in row groups.
 type tableWriter struct {
 	w     *parquet.GenericWriter[any]
