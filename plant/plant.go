@@ -137,8 +137,11 @@ func (p *Plant) Reset(s Setup) error {
 	c := s.Cell.Cell
 	o := cell.Options{PeriodS: s.PeriodS / float64(s.Substeps), Branches: -1, Isothermal: c.Thermal == nil, TemperatureC: s.AmbientC,
 		OCVOffsetV: s.OCVOffsetV, R0Scale: s.R0Scale, BranchRScale: s.BranchRScale, BranchTauScale: s.BranchTauScale}
-	m, err := s.Cell.Model(o)
-	if err != nil {
+	m := p.model
+	if m == nil {
+		m = new(cell.Model)
+	}
+	if err := s.Cell.ModelInto(m, o); err != nil {
 		return fmt.Errorf("plant: %w", err)
 	}
 	*p = Plant{set: s, model: m, cur: s.Duty.Start(), fresh: noFresh, r0Factor: 1, walkFactor: 1}

@@ -64,6 +64,7 @@ type Model struct {
 	temps  []float64         // layers; empty: one layer for every temperature
 	layers [][]Segment
 	ocvByT bool
+	back   []Segment // what the layers are cut from
 }
 
 // Prepared is a checked cell with its tables joined into polynomials, from
@@ -107,11 +108,22 @@ func Compile(c *Cell, o Options) (*Model, error) {
 // Model cuts the model for one set of options. It returns an error for an
 // option out of range.
 func (p *Prepared) Model(o Options) (*Model, error) {
-	c := p.Cell
-	if err := o.validate(c); err != nil {
+	m := new(Model)
+	if err := p.ModelInto(m, o); err != nil {
 		return nil, err
 	}
-	m := &Model{Cell: c, CapacityAh: c.CapacityAh, Efficiency: c.CoulombicEfficiency, PeriodS: o.PeriodS, ocvByT: p.byT}
+	return m, nil
+}
+
+// ModelInto is Model into the memory of m, whose former self is lost to every
+// View bound to it.
+func (p *Prepared) ModelInto(m *Model, o Options) error {
+	c := p.Cell
+	if err := o.validate(c); err != nil {
+		return err
+	}
+	*m = Model{Cell: c, CapacityAh: c.CapacityAh, Efficiency: c.CoulombicEfficiency, PeriodS: o.PeriodS, ocvByT: p.byT,
+		layers: m.layers[:0], back: m.back}
 	if h := c.Hysteresis; h != nil {
 		m.Hysteretic, m.Rate = true, h.Rate
 	}
@@ -119,7 +131,7 @@ func (p *Prepared) Model(o Options) (*Model, error) {
 	m.N = len(keep)
 	m.layOut(p, keep, fold, o)
 	m.fixTaus(c, keep, o)
-	return m, nil
+	return nil
 }
 
 func (o *Options) validate(c *Cell) error {
@@ -216,11 +228,13 @@ func (m *Model) layOut(p *Prepared, keep, fold []int, o Options) {
 	default:
 		m.temps = temps
 	}
-	m.layers = make([][]Segment, len(temps))
 	n := len(p.knots)
-	back := make([]Segment, len(temps)*(n+1))
+	if need := len(temps) * (n + 1); cap(m.back) < need {
+		m.back = make([]Segment, need)
+	}
+	m.back = m.back[:cap(m.back)]
 	for l, at := range temps {
-		segs := back[l*(n+1) : (l+1)*(n+1) : (l+1)*(n+1)]
+		segs := m.back[l*(n+1) : (l+1)*(n+1) : (l+1)*(n+1)]
 		for k := range segs {
 			lo, hi, ref := math.Inf(-1), math.Inf(1), p.knots[0]
 			if k > 0 {
@@ -231,7 +245,7 @@ func (m *Model) layOut(p *Prepared, keep, fold []int, o Options) {
 			}
 			p.s.segment(&segs[k], p.Cell, lo, hi, ref, at, keep, fold, o)
 		}
-		m.layers[l] = segs
+		m.layers = append(m.layers, segs)
 	}
 	m.rOverR = 1
 	if o.BranchRScale > 0 {
@@ -240,7 +254,7 @@ func (m *Model) layOut(p *Prepared, keep, fold []int, o Options) {
 }
 
 func (s *surfaces) segment(g *Segment, c *Cell, lo, hi, ref, at float64, keep, fold []int, o Options) {
-	g.Lo, g.Hi, g.Ref = lo, hi, ref
+	*g = Segment{Lo: lo, Hi: hi, Ref: ref}
 	g.OCV = s.ocv.on(lo, hi, ref, at)
 	if s.slope != nil {
 		g.OCV = g.OCV.plus(s.slope.on(lo, hi, ref, at).scaled(at - c.TemperatureRefC))

@@ -20,6 +20,7 @@ type node struct {
 	quantity Quantity
 	at       []float64
 	value    []float64
+	stepS    float64 // at[k] is k·stepS to the bit; 0: uneven
 	passS    float64 // a leaf's length, a group's cap; +Inf: none
 
 	// exact says that it always lasts totalS; then children begin at offset
@@ -64,9 +65,23 @@ func (b *builder) node(l *Leg, depth, topLeg int, outer []Stop, atLimit AtLimit)
 		}
 	} else {
 		b.leaf(&n, l)
+		n.stepS = evenStepS(n.at)
 	}
 	n.measure()
 	return n
+}
+
+// evenStepS returns the one distance of all changes, or 0.
+func evenStepS(at []float64) float64 {
+	if len(at) < 2 {
+		return 0
+	}
+	for k := range at {
+		if at[k] != float64(k)*at[1] {
+			return 0
+		}
+	}
+	return at[1]
 }
 
 // measure works out how long the node lasts, where that is known.

@@ -20,6 +20,7 @@ type Cursor struct {
 	demand  Demand
 	at      []float64 // the present pass's changes …
 	value   []float64 // … and values
+	stepS   float64   // of even changes; else 0
 	k       int       // which of them holds
 	passS   float64   // when the pass began
 	endS    float64   // when it ends by itself
@@ -151,7 +152,7 @@ func (c *Cursor) begin(i int, startS float64) {
 		return
 	}
 	c.top = i
-	c.at, c.value, c.k = f.n.at, f.n.value, 0
+	c.at, c.value, c.stepS, c.k = f.n.at, f.n.value, f.n.stepS, 0
 	c.passS, c.endS, c.capS = startS, startS+f.n.passS, f.capS
 	c.stops = f.n.stops
 	c.demand.Quantity = f.n.quantity
@@ -201,6 +202,12 @@ func (c *Cursor) Currents(dst []float64, number int64, periodS, tolS float64) in
 	value := c.value[:len(at)]
 	passS, capS, last := c.passS, c.capS, min(c.endS, c.capS)
 	n := 0
+	// Changes as far apart as samples, in step with them: all but the last at once.
+	if all := min(len(dst), len(at)-1-k); all > 0 && c.stepS == periodS && passS+at[k+all] < last &&
+		math.Abs(passS+at[k]-float64(number)*periodS) <= tolS/2 {
+		n = copy(dst, value[k:k+all])
+		k += n
+	}
 	for n < len(dst) && k < len(at) {
 		next := float64(number+int64(n)+1) * periodS
 		end, more := last, false
