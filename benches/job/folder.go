@@ -153,26 +153,68 @@ func isTemp(name string) bool {
 	return strings.HasPrefix(name, ".") && strings.HasSuffix(name, ".part")
 }
 
-// finish removes the parts and, where it replaces another folder, takes its
-// place; what no run wrote is carried over.
-func (f *folder) finish() error {
-	if err := os.RemoveAll(f.parts()); err != nil {
-		return err
+// scratchFolder makes a folder beside dir that takes its place at the end, for
+// a job that is not continued. A folder that stands at dir is refused, unless it
+// is to be replaced.
+func scratchFolder(dir string, force bool) (*folder, error) {
+	dir = filepath.Clean(dir)
+	f := &folder{asked: dir, replaces: true}
+	info, err := os.Stat(dir)
+	switch {
+	case errors.Is(err, fs.ErrNotExist):
+	case err != nil:
+		return nil, wrong(err)
+	case !info.IsDir():
+		return nil, wrongf("output %s is a file, allowed is a folder that does not exist yet", dir)
+	case !force:
+		return nil, wrongf("output folder %s exists; give another -o, or --force to replace it", dir)
+	default:
+		if err := f.mayReplace(); err != nil {
+			return nil, wrong(err)
+		}
 	}
-	if !f.replaces {
-		return nil
+	parent := filepath.Dir(f.asked)
+	if err := os.MkdirAll(parent, 0o755); err != nil {
+		return nil, wrong(err)
+	}
+	if f.work, err = os.MkdirTemp(parent, "."+filepath.Base(f.asked)+".*"); err != nil {
+		return nil, wrong(err)
+	}
+	return f, wrong(os.Chmod(f.work, 0o755))
+}
+
+// drop removes a scratch folder that did not become the asked one.
+func (f *folder) drop() {
+	if f.replaces {
+		os.RemoveAll(f.work)
+	}
+}
+
+// finish removes the parts and, where the folder is another than the asked one,
+// takes that one's place; what no run wrote there is carried over.
+func (f *folder) finish() error {
+	if err := os.RemoveAll(f.parts()); err != nil || !f.replaces {
+		return err
 	}
 	old := filepath.Join(filepath.Dir(f.asked), "."+filepath.Base(f.asked)+".replaced")
 	if _, err := os.Stat(old); err == nil {
-		return fmt.Errorf("folder %s is left from an earlier swap; the new results stay in %s until it is moved away", old, f.work)
+		return fmt.Errorf("folder %s is left from a swap that was broken off; the new results stay in %s until it is moved away", old, f.work)
 	}
-	if err := os.Rename(f.asked, old); err != nil {
+	err := os.Rename(f.asked, old)
+	standing := err == nil
+	if err != nil && !errors.Is(err, fs.ErrNotExist) {
 		return err
 	}
 	if err := os.Rename(f.work, f.asked); err != nil {
-		return errors.Join(err, os.Rename(old, f.asked))
+		if standing {
+			return errors.Join(err, os.Rename(old, f.asked))
+		}
+		return err
 	}
 	f.work, f.replaces = f.asked, false
+	if !standing {
+		return nil
+	}
 	foreign, err := foreignIn(old)
 	if err != nil {
 		return err
@@ -183,6 +225,14 @@ func (f *folder) finish() error {
 		}
 	}
 	return os.RemoveAll(old)
+}
+
+// shown is where the files are, in the words of who asked for them.
+func (f *folder) shown(asked string) string {
+	if f.replaces {
+		return f.work
+	}
+	return filepath.Clean(asked)
 }
 
 // close lets another run have the folder.

@@ -43,18 +43,11 @@ func loadRun(o *RunOptions) (*runInputs, error) {
 	if err != nil {
 		return nil, err
 	}
-	if o.PlanPath != "" {
-		p, _, err := define.ReadPlan(o.PlanPath)
-		if err != nil {
-			return nil, wrong(err)
-		}
-		if err := scenario.CheckLimits(p.Limits, score.MetricNames()); err != nil {
-			return nil, wrongf("%s: %w", o.PlanPath, err)
-		}
-		set.Score, set.Limits = p.Score, p.Limits
-		if err := set.Validate(); err != nil {
-			return nil, wrongf("%s for %s: %w", o.PlanPath, o.SetPath, err)
-		}
+	if err := usePlan(set, o.PlanPath); err != nil {
+		return nil, err
+	}
+	if err := set.Validate(); err != nil { // a plan's limits may name a group
+		return nil, wrongf("%s: %w", o.PlanPath, err)
 	}
 	specs, texts, err := loadEstimators(o.EstimatorPaths)
 	if err != nil {

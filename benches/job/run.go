@@ -144,7 +144,7 @@ func (r *running) toEnd(ctx context.Context, pick tracePick) (*Outcome, error) {
 	if err := r.closeAll(!stopped); err != nil {
 		return nil, errors.Join(err, l.flush())
 	}
-	out := &Outcome{Dir: l.folder.work, Name: r.in.name, Set: r.in.set, Results: results, Costs: r.byName(),
+	out := &Outcome{Dir: l.folder.shown(r.o.OutDir), Name: r.in.name, Set: r.in.set, Results: results, Costs: r.byName(),
 		Complete: !stopped, Finished: len(l.rows), Total: l.total, Elapsed: time.Since(r.began)}
 	if out.Judged, err = score.Judge(limitsOf(r.in.set), results, samplingOf(r.in.set)); err != nil {
 		return nil, wrong(err)

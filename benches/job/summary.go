@@ -82,11 +82,27 @@ func Summarise(results []score.Result, judged []score.Judgement, set *scenario.S
 		w := WorstCase{Result: results[i]}
 		w.Value, _ = results[i].Metrics.Value(s.WorstBy)
 		if row, ok := at[results[i].ScenarioID]; ok {
-			w.Special = score.SpecialOf(columns, row, 3)
+			w.Special = standingOut(score.SpecialOf(columns, row, mostSpecial))
 		}
 		s.Worst = append(s.Worst, w)
 	}
 	return s
+}
+
+// What stands out of a worst case: no more than mostSpecial values, and of the
+// commoner ones only the first.
+const (
+	mostSpecial = 3
+	commonShare = 0.2
+)
+
+func standingOut(special []score.Special) []score.Special {
+	for i, s := range special {
+		if i > 0 && s.Share > commonShare {
+			return special[:i]
+		}
+	}
+	return special
 }
 
 // Summary sums the outcome up.

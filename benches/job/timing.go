@@ -10,6 +10,11 @@ import (
 	"soctrial/benches/store"
 )
 
+const (
+	timingFormat = "soctrial/timing/1"
+	timeFormat   = "2006-01-02T15:04:05Z"
+)
+
 // Timing is timing.json: what differs from one run of the same to the next, and
 // so stands in no other file.
 type Timing struct {
@@ -87,8 +92,8 @@ func (r *running) writeTiming() error {
 			}
 		}
 	}
-	now := Timing{Format: "soctrial/timing/1", Version: r.o.Version, Workers: r.o.workers(), Sessions: sessions,
-		StartedAt: r.began.UTC().Format("2006-01-02T15:04:05Z"), ElapsedS: t.ElapsedS + time.Since(r.began).Seconds(),
+	now := Timing{Format: timingFormat, Version: r.o.Version, Workers: r.o.workers(), Sessions: sessions,
+		StartedAt: r.began.UTC().Format(timeFormat), ElapsedS: t.ElapsedS + time.Since(r.began).Seconds(),
 		Scenarios: t.Scenarios + len(r.ledger.rows) - r.found}
 	for i, s := range r.in.specs {
 		now.Estimators = append(now.Estimators, costOf(s.Name, r.costs[i]))

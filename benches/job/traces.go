@@ -2,12 +2,18 @@ package job
 
 import (
 	"context"
+	"fmt"
 	"slices"
 	"strconv"
 	"strings"
+	"time"
 
+	"soctrial/benches"
 	"soctrial/benches/scenario"
 	"soctrial/benches/score"
+	"soctrial/benches/store"
+	"soctrial/estimator"
+	"soctrial/plant/record"
 )
 
 // tracePick is which scenarios are traced.
@@ -80,6 +86,44 @@ func (p tracePick) indices(set *scenario.Set, results []score.Result) []int {
 	return at
 }
 
+// traces runs the chosen scenarios a second time and writes what they did.
 func (r *running) traces(ctx context.Context, pick tracePick, results []score.Result) error {
-	return nil
+	if pick.none() {
+		return nil
+	}
+	set, at := r.in.set, pick.indices(r.in.set, results)
+	w, err := store.NewTraceWriter(r.ledger.folder.path(TracesFile), r.o.ThinTraces, store.TraceMeta{SetSHA256: r.in.meta.SetSHA256, Version: r.o.Version})
+	if err != nil {
+		return wrong(err)
+	}
+	defer w.Abort()
+	j := r.job()
+	began := time.Now()
+	var samples int64
+	for n, i := range at {
+		id := set.Rows[i].ID
+		err := benches.Trace(ctx, j, i, func(b benches.Block) error {
+			for e := range b.Estimates {
+				c := traceOf(&b.Readings, &b.Estimates[e])
+				t := &b.Truth
+				c.CurrentTrueA, c.VoltageTrueV, c.TemperatureTrueC, c.SOCTrue = t.CurrentA, t.VoltageV, t.TemperatureC, t.SOC
+				if err := w.Append(id, r.in.specs[e].Name, b.First, c); err != nil {
+					return wrong(err)
+				}
+			}
+			samples += int64(b.Readings.Len()) * int64(len(b.Estimates))
+			return nil
+		})
+		if err != nil {
+			return fmt.Errorf("tracing scenario %d: %w", id, err)
+		}
+		r.o.Report.progress(Progress{Stage: "traces", Done: n + 1, Total: len(at), Samples: samples, Elapsed: time.Since(began)})
+	}
+	return wrong(w.Close())
+}
+
+// traceOf is what an estimator read and made of it.
+func traceOf(r *record.Readings, e *estimator.Estimate) *store.TraceColumns {
+	return &store.TraceColumns{TimeS: r.TimeS, CurrentA: r.CurrentA, VoltageV: r.VoltageV, TemperatureC: r.TemperatureC, SOC: e.SOC,
+		SOCStd: e.SOCStd, VoltagePredictedV: e.VoltagePredictedV, InnovationV: e.InnovationV, InnovationStdV: e.InnovationStdV}
 }

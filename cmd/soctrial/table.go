@@ -41,12 +41,15 @@ func (s style) paint(word string, c text.Color) string {
 
 // grid renders rows of cells, the first column to the left and all others to
 // the right, the first row as headings.
-func grid(rows [][]string, leftToo ...int) string {
+func grid(rows [][]string, leftToo ...int) string { return spaced(rows, " ", leftToo) }
+
+// spaced is grid with that much space between columns.
+func spaced(rows [][]string, space string, leftToo []int) string {
 	t := table.NewWriter()
 	t.SetStyle(table.Style{Name: "plain", Box: table.StyleBoxLight, Format: table.FormatOptions{},
 		Options: table.Options{SeparateHeader: true}})
 	st := t.Style()
-	st.Box.PaddingLeft, st.Box.PaddingRight = "", " "
+	st.Box.PaddingLeft, st.Box.PaddingRight = "", space
 	var configs []table.ColumnConfig
 	for c := range rows[0] {
 		align := text.AlignRight
@@ -123,12 +126,12 @@ func short(name string) string {
 
 // errorTable shows how wrong each estimator is.
 func errorTable(s *job.Summary) string {
-	rows := [][]string{{"error, % SOC", "median", "p95", "worst", "median", "p95", "worst", "median", "p95", "never"}}
+	rows := [][]string{{"error, % SOC", "median", "p95", "worst", "", "median", "p95", "worst", "", "median", "p95", "never"}}
 	for _, e := range s.Estimators {
 		row := []string{short(e.Estimator)}
 		for _, m := range []string{job.MetricSettledMaxAbs, job.MetricSOCRMSE} {
 			x, _ := e.Spread(m)
-			row = append(row, percent(x.Median), percent(x.P95), percent(x.Worst))
+			row = append(row, percent(x.Median), percent(x.P95), percent(x.Worst), "")
 		}
 		c, _ := e.Spread(job.MetricConverge)
 		rows = append(rows, append(row, seconds(c.Median), seconds(c.P95), strconv.Itoa(c.Null)))
@@ -146,18 +149,19 @@ func errorTable(s *job.Summary) string {
 		i += k + 1
 	}
 	over := ""
-	for i, word := range []string{"max after settling", "RMSE, whole run", "converges after, s"} {
+	for i, word := range []string{"max, settled", "RMSE", "converges, s"} {
 		over += strings.Repeat(" ", max(1, at[i]-utf8.RuneCountInString(over))) + word
 	}
 	return over + "\n" + body
 }
 
-// honestyTable shows whether each estimator knows how wrong it is.
+// honestyTable shows whether each estimator knows how wrong it is, how its
+// runs ended and what a sample costs it.
 func honestyTable(s *job.Summary) string {
-	rows := [][]string{{"does it know?", "coverage 95 %", "NIS", "verdict", "ok", "lost", "failed", "ns/sample"}}
+	rows := [][]string{{"does it know?", "coverage 95 %", "NIS", "verdict", "ok", "lost", "failed", "ns"}}
 	for _, e := range s.Estimators {
 		h := e.Honesty
-		rows = append(rows, []string{short(e.Estimator), interval(h.Coverage95, 1), figure(h.NIS.Mean), verdict(h.Verdict),
+		rows = append(rows, []string{short(e.Estimator), interval(h.Coverage95), figure(h.NIS.Mean), verdict(h.Verdict),
 			strconv.Itoa(e.OK), strconv.Itoa(e.Lost), strconv.Itoa(e.Failed), figure(e.NsPerSample)})
 	}
 	return grid(rows, 1, 3)
@@ -170,14 +174,15 @@ func verdict(c score.Confidence) string {
 	return string(c)
 }
 
-func interval(i score.Interval, scale float64) string {
+// interval shows a mean over scenarios with its 95 % interval.
+func interval(i score.Interval) string {
 	if i.N == 0 {
 		return "-"
 	}
 	if math.IsInf(i.Low, 0) {
-		return fmt.Sprintf("%.3f", scale*i.Mean)
+		return fmt.Sprintf("%.2f", i.Mean)
 	}
-	return fmt.Sprintf("%.3f [%.3f, %.3f]", scale*i.Mean, scale*i.Low, scale*i.High)
+	return fmt.Sprintf("%.2f [%.2f, %.2f]", i.Mean, i.Low, i.High)
 }
 
 // writeReasons says what makes the verdicts, and why runs ended.
