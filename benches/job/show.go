@@ -77,6 +77,9 @@ func showParquet(o *ShowOptions) (*Shown, error) {
 	}
 	switch kind {
 	case "soctrial/set/1":
+		if o.PicturePath != "" {
+			return nil, noPicture("set")
+		}
 		return showSet(o)
 	case "soctrial/results/1":
 		return showResults(o)
@@ -113,7 +116,15 @@ func showDefinition(o *ShowOptions) (*Shown, error) {
 	if err != nil {
 		return nil, wrong(err)
 	}
+	if o.PicturePath != "" && kind != define.KindCell && kind != define.KindDuty {
+		return nil, noPicture(kind)
+	}
 	return s, nil
+}
+
+// noPicture says what can be drawn.
+func noPicture(kind string) error {
+	return wrongf("--picture: found a file of kind %s, allowed is a cell, a duty, results, traces or a record", kind)
 }
 
 func showTiming(o *ShowOptions) (*Shown, error) {

@@ -58,6 +58,9 @@ func (s *Shown) cell(o *ShowOptions) error {
 		rows = append(rows, row)
 	}
 	s.Tables = append(s.Tables, ShownTable{fmt.Sprintf("At %g °C", c.TemperatureRefC), rows})
+	if o.PicturePath != "" {
+		return drawCell(o.PicturePath, c, m)
+	}
 	return nil
 }
 

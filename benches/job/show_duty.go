@@ -41,6 +41,9 @@ func (s *Shown) duty(o *ShowOptions) error {
 	}
 	rows := [][]string{{"leg", "kind", "asks", "lasts", "repeat", "stops"}}
 	s.Tables = append(s.Tables, ShownTable{"Legs", addLegs(rows, d.Legs, "")})
+	if o.PicturePath != "" {
+		return drawDuty(o.PicturePath, d.Name, one)
+	}
 	return nil
 }
 

@@ -147,6 +147,11 @@ func showResults(o *ShowOptions) (*Shown, error) {
 			out.Costs[e.Name] = benches.Cost{Samples: e.Samples, Nanos: int64(e.ElapsedS * 1e9)}
 		}
 	}
+	if o.PicturePath != "" {
+		if err := drawResults(o.PicturePath, out); err != nil {
+			return nil, err
+		}
+	}
 	return &Shown{Kind: "results", Name: out.Name, Outcome: out}, nil
 }
 
@@ -182,5 +187,8 @@ func showTraces(o *ShowOptions) (*Shown, error) {
 		rows = append(rows[:most+1], []string{"…", fmt.Sprintf("and %d more", len(keys)-most), ""})
 	}
 	s.Tables = append(s.Tables, ShownTable{"Traces", rows})
+	if o.PicturePath != "" {
+		return s, drawTraces(o.PicturePath, o.Path, keys)
+	}
 	return s, nil
 }

@@ -107,6 +107,9 @@ type rowDoc map[string]string
 func shownJSON(s *job.Shown) shownDoc {
 	d := shownDoc{Format: "soctrial/show/1", Kind: s.Kind, Name: s.Name, Facts: map[string]string{}, Tables: map[string][]rowDoc{}}
 	for _, f := range s.Facts {
+		if before := d.Facts[f.Name]; before != "" {
+			f.Value = before + "; " + f.Value
+		}
 		d.Facts[f.Name] = f.Value
 	}
 	for _, t := range s.Tables {

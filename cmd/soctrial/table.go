@@ -86,7 +86,14 @@ func spaced(rows [][]string, space string, leftToo []int) string {
 func summaryText(o *job.Outcome, st style) string {
 	s := o.Summary()
 	var b strings.Builder
-	fmt.Fprintf(&b, "%s\n\n", headline(o, len(s.Estimators)))
+	wrapped(&b, "", headline(o, len(s.Estimators)))
+	b.WriteString("\n")
+	if o.Reference != "" {
+		b.WriteString(replayTable(o, s))
+		writeReasons(&b, s)
+		writeLimits(&b, s, st)
+		return b.String()
+	}
 	b.WriteString(errorTable(s))
 	b.WriteString("\n")
 	b.WriteString(honestyTable(s))
@@ -99,7 +106,8 @@ func summaryText(o *job.Outcome, st style) string {
 func headline(o *job.Outcome, estimators int) string {
 	name := strings.TrimSuffix(o.Name, ".parquet")
 	if o.Reference != "" {
-		return fmt.Sprintf("%s, %s; reference SOC: %s", name, counted(estimators, "estimator"), o.Reference)
+		return fmt.Sprintf("%s: replay of %.4g s, %s. Reference SOC: %s.", name, o.Results[0].Metrics.DurationS,
+			counted(estimators, "estimator"), o.Reference)
 	}
 	state := ""
 	if !o.Complete {
@@ -153,6 +161,19 @@ func errorTable(s *job.Summary) string {
 		over += strings.Repeat(" ", max(1, at[i]-utf8.RuneCountInString(over))) + word
 	}
 	return over + "\n" + body
+}
+
+// replayTable shows each estimator on the one record.
+func replayTable(o *job.Outcome, s *job.Summary) string {
+	rows := [][]string{{"error, % SOC", "RMSE", "bias", "max", "settled", "end", "conv. s", "U mV", "NIS", "in 95 %", "ns"}}
+	for i := range o.Results {
+		r := &o.Results[i]
+		m := &r.Metrics
+		rows = append(rows, []string{short(r.Estimator), percent(m.SOCRMSE), percent(m.SOCBias), percent(m.SOCMaxAbs), percent(m.SettledMaxAbs),
+			percent(m.EndError), seconds(m.ConvergeS), figure(1000 * m.VoltageRMSEV), figure(m.NISMean), figure(100 * m.Coverage95),
+			figure(s.Estimators[i].NsPerSample)})
+	}
+	return grid(rows) + "U: RMS of voltage minus prediction. settled: largest after settling.\n"
 }
 
 // honestyTable shows whether each estimator knows how wrong it is, how its
