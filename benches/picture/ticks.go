@@ -3,68 +3,105 @@ package picture
 import (
 	"math"
 	"strconv"
-
-	"gonum.org/v1/plot"
+	"strings"
 )
 
-// ticks marks an axis at multiples of 1, 2 or 5 times a power of ten, about so
-// many of them.
-type ticks struct{ about int }
+// tick is one mark on an axis; without a label it is a minor one.
+type tick struct {
+	value float64
+	label string
+}
 
-// Ticks implements plot.Ticker.
-func (t ticks) Ticks(lo, hi float64) []plot.Tick {
-	if !(hi > lo) || !finite(lo) || !finite(hi) {
-		return nil
+// linearTicks marks lo to hi in steps of 1, 2 or 5 times a power of ten, with
+// at most most labels and minor marks between.
+func linearTicks(lo, hi float64, most int) []tick {
+	step, parts := niceStep(hi-lo, most)
+	var out []tick
+	minor := step / float64(parts)
+	first, last := math.Ceil(lo/minor-1e-6), math.Floor(hi/minor+1e-6)
+	if last-first > float64(20*most) || first+1 == first {
+		return []tick{{lo, number(lo, 0)}, {hi, number(hi, 0)}}
 	}
-	raw := (hi - lo) / float64(max(t.about, 2))
-	power := math.Floor(math.Log10(raw))
-	step := math.Pow(10, power+1)
-	for _, m := range []float64{1, 2, 5} {
-		if s := m * math.Pow(10, power); s >= raw*(1-1e-9) {
-			step = s
-			break
+	for k := first; k <= last; k++ {
+		t := tick{value: k * minor}
+		if math.Mod(k, float64(parts)) == 0 {
+			t.value = k / float64(parts) * step
+			t.label = number(t.value, step)
 		}
-	}
-	decimals := max(0, -int(math.Floor(math.Log10(step)+1e-9)))
-	var out []plot.Tick
-	for k := math.Ceil(lo/step - 1e-9); k*step <= hi+1e-9*step && len(out) < 100; k++ {
-		out = append(out, plot.Tick{Value: k * step, Label: label(k*step, step, decimals)})
+		out = append(out, t)
 	}
 	return out
 }
 
-// label writes v; very large and very small axes by powers of ten.
-func label(v, step float64, decimals int) string {
-	if math.Abs(v) < step/2 {
-		return "0"
+// niceStep returns the least step of 1, 2 or 5 times a power of ten that cuts
+// span into at most most parts, and into how many parts minor marks cut it.
+func niceStep(span float64, most int) (step float64, parts int) {
+	raw := span / float64(max(most, 1))
+	power := math.Pow(10, math.Floor(math.Log10(raw)))
+	for _, m := range []struct {
+		times float64
+		parts int
+	}{{1, 5}, {2, 4}, {5, 5}} {
+		if raw <= m.times*power*(1+1e-9) {
+			return m.times * power, m.parts
+		}
 	}
-	if math.Abs(v) >= 1e6 || decimals > 5 {
-		return strconv.FormatFloat(v, 'g', 4, 64)
-	}
-	return strconv.FormatFloat(v, 'f', decimals, 64)
+	return 10 * power, 5
 }
 
-// decades marks a logarithmic axis at powers of ten, and at 2 and 5 times them
-// where there is room.
-type decades struct{}
-
-// Ticks implements plot.Ticker.
-func (decades) Ticks(lo, hi float64) []plot.Tick {
-	if !(lo > 0) || !(hi > lo) {
-		return nil
+// number shows v with the digits that steps of step need; 0: what it takes.
+func number(v, step float64) string {
+	size := math.Max(math.Abs(v), step)
+	switch {
+	case v == 0:
+		return "0"
+	case step == 0:
+		return strconv.FormatFloat(v, 'g', 4, 64)
+	case size >= 1e6 || step < 1e-5:
+		digits := max(0, int(math.Floor(math.Log10(size)))-int(math.Floor(math.Log10(step)+1e-9)))
+		return exponent(strconv.FormatFloat(v, 'e', min(digits, 12), 64))
 	}
-	span := math.Log10(hi / lo)
-	every := max(1, int(math.Ceil(span/8)))
-	var out []plot.Tick
+	s := strconv.FormatFloat(v, 'f', max(0, -int(math.Floor(math.Log10(step)+1e-9))), 64)
+	if strings.Trim(s, "-0.") == "" {
+		return "0"
+	}
+	return strings.Replace(s, "-", "−", 1)
+}
+
+// exponent tidies 1.50e+06 to 1.5e6.
+func exponent(s string) string {
+	mantissa, power, _ := strings.Cut(s, "e")
+	if strings.Contains(mantissa, ".") {
+		mantissa = strings.TrimRight(strings.TrimRight(mantissa, "0"), ".")
+	}
+	if n, err := strconv.Atoi(power); err == nil {
+		power = strconv.Itoa(n)
+	}
+	return strings.ReplaceAll(mantissa+"e"+power, "-", "−")
+}
+
+// decadeTicks marks lo to hi, both above 0, at whole decades, with minor marks
+// at 2 to 9; over less than about two decades 2 and 5 are labelled too, over
+// less than one a linear axis' marks are used.
+func decadeTicks(lo, hi float64, most int) []tick {
+	decades := math.Log10(hi) - math.Log10(lo)
+	if decades < 1 {
+		return linearTicks(lo, hi, most)
+	}
+	every := max(1, int(math.Ceil(decades/float64(max(most, 1)))))
+	var out []tick
 	for e := int(math.Floor(math.Log10(lo))); e <= int(math.Ceil(math.Log10(hi))); e++ {
-		for m := 1.0; m < 10; m++ {
-			v := m * math.Pow(10, float64(e))
-			if v < lo*(1-1e-9) || v > hi*(1+1e-9) {
+		for m := 1; m <= 9; m++ {
+			v := power10(float64(m), e)
+			if v < lo*(1-1e-9) || v > hi*(1+1e-9) || m > 1 && every > 1 {
 				continue
 			}
-			t := plot.Tick{Value: v}
-			if m == 1 && e%every == 0 || span < 2.5 && (m == 2 || m == 5) {
-				t.Label = strconv.FormatFloat(v, 'g', 3, 64)
+			t := tick{value: v}
+			if m == 1 && e%every == 0 || 3*decades <= float64(most)+0.5 && (m == 2 || m == 5) {
+				t.label = strings.Replace(strconv.FormatFloat(v, 'g', -1, 64), "e-0", "e-", 1)
+				if v >= 1e6 || v < 1e-4 {
+					t.label = exponent(strconv.FormatFloat(v, 'e', 0, 64))
+				}
 			}
 			out = append(out, t)
 		}
@@ -72,17 +109,11 @@ func (decades) Ticks(lo, hi float64) []plot.Tick {
 	return out
 }
 
-// unlabelled keeps the marks of an axis and drops their labels, for panels that
-// have another one below.
-type unlabelled struct{ of plot.Ticker }
-
-// Ticks implements plot.Ticker.
-func (u unlabelled) Ticks(lo, hi float64) []plot.Tick {
-	out := u.of.Ticks(lo, hi)
-	for i := range out {
-		if out[i].Label != "" {
-			out[i].Label = " "
-		}
+// power10 is m·10^e, rounded once.
+func power10(m float64, e int) float64 {
+	v, err := strconv.ParseFloat(strconv.FormatFloat(m, 'f', -1, 64)+"e"+strconv.Itoa(e), 64)
+	if err != nil {
+		return math.Inf(1)
 	}
-	return out
+	return v
 }
