@@ -50,10 +50,11 @@ func recognise(head string) heading {
 		if plainWords[r] == "" {
 			continue
 		}
-		if strings.Contains(plainWords[r], "|"+whole+"|") {
-			return heading{role: r, known: true}
-		}
+		// The unit first: the plain word of "SOC [%]" has lost it.
 		if unitWord == "" || base == "" {
+			if strings.Contains(plainWords[r], "|"+whole+"|") {
+				return heading{role: r, known: true}
+			}
 			continue
 		}
 		if strings.TrimSpace(base) == "T" && r != temperatureRole {
@@ -64,6 +65,10 @@ func recognise(head string) heading {
 		if name, ok := spelledUnit(r, unitWord); ok &&
 			(strings.Contains(plainWords[r], "|"+plainWord(base)+"|") || r == temperatureRole && strings.TrimSpace(base) == "T") {
 			return heading{role: r, unit: name, known: true}
+		}
+		// A unit of signs alone that is none of this role's is no plain word.
+		if plainWord(unitWord) != "" && strings.Contains(plainWords[r], "|"+whole+"|") {
+			return heading{role: r, known: true}
 		}
 	}
 	if strings.Contains(dateWords, "|"+whole+"|") {
@@ -80,6 +85,9 @@ func cutUnit(head string) (base, unitWord string) {
 		if i := strings.IndexByte(head, b[0]); i > 0 && strings.HasSuffix(head, b[1:]) {
 			return head[:i], head[i+1 : len(head)-1]
 		}
+	}
+	if base, ok := strings.CutSuffix(head, "%"); ok {
+		return strings.TrimRight(base, "/,_ "), "%"
 	}
 	for _, mark := range []string{"/", ",", "_", " "} {
 		if i := strings.LastIndex(head, mark); i > 0 {

@@ -77,15 +77,22 @@ func skippable(line []byte) bool {
 	return len(line) == 0 || line[0] == '#' || line[0] == '%'
 }
 
-// split cuts a line into fields, which share its memory: trimmed, and freed of
-// quotes. A quoted field may hold the delimiter and doubled quotes; a line end ends it.
+// split is cut where a bad quote does not matter.
 func split(line []byte, delimiter byte, into [][]byte) [][]byte {
-	into = into[:0]
+	into, _ = cut(line, delimiter, into)
+	return into
+}
+
+// cut cuts a line into fields, which share its memory: trimmed, and freed of
+// quotes. A quoted field may hold the delimiter and doubled quotes, but no line
+// end; whole is false where a quote is left open or text follows its end.
+func cut(line []byte, delimiter byte, into [][]byte) (fields [][]byte, whole bool) {
+	into, whole = into[:0], true
 	if bytes.IndexByte(line, '"') < 0 {
 		for {
 			i := bytes.IndexByte(line, delimiter)
 			if i < 0 {
-				return append(into, trim(line))
+				return append(into, trim(line)), whole
 			}
 			into = append(into, trim(line[:i]))
 			line = line[i+1:]
@@ -96,7 +103,7 @@ func split(line []byte, delimiter byte, into [][]byte) [][]byte {
 		if len(field) == 0 || field[0] != '"' {
 			i := bytes.IndexByte(line, delimiter)
 			if i < 0 {
-				return append(into, trim(line))
+				return append(into, trim(line)), whole
 			}
 			into, line = append(into, trim(line[:i])), line[i+1:]
 			continue
@@ -118,8 +125,14 @@ func split(line []byte, delimiter byte, into [][]byte) [][]byte {
 		into = append(into, trim(value))
 		rest := field[min(end, len(field)):]
 		i := bytes.IndexByte(rest, delimiter)
+		after := rest
+		if i >= 0 {
+			after = rest[:i]
+		}
+		// What is left of a well-formed field is its closing quote.
+		whole = whole && len(after) > 0 && len(trim(after[1:])) == 0
 		if i < 0 {
-			return into
+			return into, whole
 		}
 		line = rest[i+1:]
 	}

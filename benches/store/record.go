@@ -110,6 +110,9 @@ type assembler struct {
 	zero    time.Time // of a wall clock
 	started bool
 	first   error // the first row that repair left out
+	missing [roles]int
+	repeats int // times equal to the one before
+	passed  int // blank and comment lines between the rows
 }
 
 // fromText reads a CSV file.
@@ -130,6 +133,7 @@ func (a *assembler) fromText(in io.Reader, m *record.Map, chargePositive *bool) 
 	for {
 		fields, line, err := s.next()
 		if errors.Is(err, io.EOF) {
+			a.passed = s.passed
 			return nil
 		}
 		if err == nil {
@@ -143,8 +147,10 @@ func (a *assembler) fromText(in io.Reader, m *record.Map, chargePositive *bool) 
 
 // mend drops a bad row where rows are repaired, and keeps any other error.
 func (a *assembler) mend(err error) error {
-	var row *rowError
-	if err == nil || !a.repair || !errors.As(err, &row) {
+	if err == nil || !a.repair {
+		return err
+	}
+	if _, ok := errors.AsType[*rowError](err); !ok {
 		return err
 	}
 	if a.told.Dropped++; a.first == nil {
@@ -229,6 +235,9 @@ func (a *assembler) add(row [roles]float64, line int, where string) error {
 			continue
 		}
 		x := c.unit.convert(row[r])
+		if math.IsInf(x, 0) {
+			return &rowError{fmt.Errorf("%s %d, column %q: %g is not a finite number in %s", where, line, c.head, row[r], nativeUnits[r])}
+		}
 		if c.flip && x != 0 {
 			x = -x
 		}
@@ -239,14 +248,20 @@ func (a *assembler) add(row [roles]float64, line int, where string) error {
 		return &rowError{fmt.Errorf("%s %d has no time", where, line)}
 	}
 	if n := len(a.columns[timeRole]); n > 0 && t < a.columns[timeRole][n-1] {
-		return &rowError{fmt.Errorf("%s %d: time goes back from %g s to %g s; it may repeat but not go back", where, line, a.columns[timeRole][n-1], t)}
+		return &rowError{fmt.Errorf("%s %d: time goes back from %g s to %g s; it may repeat but not go back (--repair leaves such rows out)", where, line, a.columns[timeRole][n-1], t)}
 	}
 	if z := row[socRole]; a.bound.of[socRole] != nil && math.Abs(z) > 1.5 {
 		return &rowError{fmt.Errorf("%s %d: soc is %g, which is no fraction; name its unit in a map if it is percent", where, line, z)}
 	}
+	if n := len(a.columns[timeRole]); n > 0 && t == a.columns[timeRole][n-1] {
+		a.repeats++
+	}
 	for r, c := range a.bound.of {
 		if c != nil {
 			a.columns[r] = append(a.columns[r], row[r])
+			if math.IsNaN(row[r]) {
+				a.missing[r]++
+			}
 		}
 	}
 	return nil
@@ -254,6 +269,7 @@ func (a *assembler) add(row [roles]float64, line int, where string) error {
 
 // finish checks the whole record and gives it.
 func (a *assembler) finish() (*record.Record, error) {
+	a.count()
 	if a.told.Dropped > 0 {
 		a.told.Lines = append(a.told.Lines, fmt.Sprintf("%d rows left out by repair; the first: %v", a.told.Dropped, a.first))
 	}

@@ -20,6 +20,7 @@ type sheet struct {
 	heads     []string // empty where the file has none
 	units     []string // what a line of units below the headings says; nil: no such line
 	notes     []string
+	passed    int // blank and comment lines between the rows
 	fields    [][]byte
 }
 
@@ -62,7 +63,9 @@ func openSheet(in io.Reader, m *record.Map, isHeading func([]string) bool) (*she
 		return nil, errors.New("the file is empty")
 	}
 	if s.delimiter = s.findDelimiter(); m.Delimiter != "" {
-		s.delimiter = m.Delimiter[0]
+		if s.delimiter = m.Delimiter[0]; len(m.Delimiter) > 1 || s.delimiter == '"' {
+			return nil, fmt.Errorf("map: delimiter is %q; one ASCII character that is no quote is allowed", m.Delimiter)
+		}
 	}
 	s.takeHeadings(isHeading)
 	s.takeUnits()
@@ -197,9 +200,13 @@ func (s *sheet) next() (fields [][]byte, line int, err error) {
 			line = s.lines.n
 		}
 		if skippable(b) {
+			s.passed++
 			continue
 		}
-		s.fields = split(b, s.delimiter, s.fields)
+		var whole bool
+		if s.fields, whole = cut(b, s.delimiter, s.fields); !whole {
+			return nil, line, &rowError{fmt.Errorf("line %d: a quoted field must end in a quote before the delimiter (%q) or the line's end", line, s.delimiter)}
+		}
 		if len(s.heads) == 0 {
 			return s.fields, line, nil
 		}
