@@ -34,6 +34,7 @@ type ledger struct {
 	pending   []score.Result
 	lastWrite time.Time
 	nextPart  int
+	partRows  int
 	now       func() time.Time
 }
 
@@ -130,7 +131,7 @@ func partNumber(name string) (int, bool) {
 func (l *ledger) add(results []score.Result) error {
 	l.rows[results[0].ScenarioID] = results
 	l.pending = append(l.pending, results...)
-	if len(l.pending) < partRows && l.now().Sub(l.lastWrite) < partEvery {
+	if len(l.pending) < l.partRows && l.now().Sub(l.lastWrite) < partEvery {
 		return nil
 	}
 	return l.flush()

@@ -1,6 +1,7 @@
 package job
 
 import (
+	"cmp"
 	"context"
 	"errors"
 	"fmt"
@@ -28,6 +29,8 @@ type RunOptions struct {
 	Force          bool
 	Version        string // of the program, into the metadata
 	Report         Reporter
+
+	partRows int // finished rows that make a part; 0: the usual number
 }
 
 // Outcome is what a run, or a replay, came to.
@@ -89,7 +92,7 @@ func Run(ctx context.Context, o RunOptions) (*Outcome, error) {
 		rows = map[int64][]score.Result{}
 	}
 	l := &ledger{folder: f, meta: in.meta, total: len(in.set.Rows), perRow: len(in.specs), rows: rows, nextPart: next,
-		now: time.Now, lastWrite: began}
+		partRows: cmp.Or(o.partRows, partRows), now: time.Now, lastWrite: began}
 	r := &running{o: &o, in: in, ledger: l, began: began, costs: make([]benches.Cost, len(in.specs)), found: len(rows)}
 	if r.found > 0 {
 		o.Report.warn("continuing %s: %d of %d scenarios were finished already", o.OutDir, r.found, l.total)
