@@ -393,3 +393,5 @@ func TestContrastsFindTheCause(t *testing.T) {
 		t.Errorf("found %+v, asked is kind old", got)
 	}
 }
+
+func (w workplace) glob(pattern string) ([]string, error) { return filepath.Glob(w.path(pattern)) }
