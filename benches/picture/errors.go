@@ -125,6 +125,9 @@ func WorstErrors(w io.Writer, format Format, c DistributionColumns) error {
 		end.add(&x, e.Values...)
 	}
 	end.add(&x, c.AtMost)
+	if x.log { // a few lucky scenarios must not push the others aside
+		end.lo = math.Max(end.lo, end.hi/3000)
+	}
 	p.x.fit(end, 0.03)
 	if !p.x.log && end.lo >= 0 {
 		p.x.lo = 0
@@ -178,6 +181,7 @@ func cumulative(a *axis, values []float64) (x, share []float64) {
 	n := float64(len(values))
 	x, share = append(x, a.lo), append(share, 0)
 	for i, v := range sorted {
+		v = math.Max(v, a.lo)
 		x, share = append(x, v, v), append(share, 100*float64(i)/n, 100*float64(i+1)/n)
 	}
 	return append(x, a.hi), append(share, 100*float64(len(sorted))/n)

@@ -67,7 +67,24 @@ func (p *panel) fit() {
 
 // yTicks are the marks of a panel of some height.
 func (p *panel) yTicks(high vg.Length) []tick {
-	return p.y.ticks(min(10, tickRoom(high, 2.4*tickSize)))
+	return p.y.ticks(min(10, tickRoom(high, 1.9*tickSize)))
+}
+
+// xTicks are the marks of a panel of some width: as many as their labels have
+// room for.
+func (p *panel) xTicks(st text.Style, wide vg.Length) []tick {
+	for most := min(12, tickRoom(wide, 4*tickSize)); ; most-- {
+		ticks := p.x.ticks(most)
+		need := vg.Length(0)
+		for _, t := range ticks {
+			if t.label != "" {
+				need += st.Width(t.label) + tickSize
+			}
+		}
+		if need <= 1.1*wide || most <= 2 {
+			return ticks
+		}
+	}
 }
 
 func (p *panel) leftRoom(st text.Style, high vg.Length) vg.Length {
@@ -109,7 +126,7 @@ func (p *panel) draw(c draw.Canvas, l lettering, nameX, nameY bool, left vg.Leng
 	for _, ln := range p.lines {
 		for _, run := range runs(&p.x, &p.y, ln.x, ln.y) {
 			var path []vg.Point
-			for _, q := range thin(run, p.x.lo, p.x.hi, columns) {
+			for _, q := range thin(run, &p.x, columns) {
 				path = append(path, at(q))
 			}
 			c.StrokeLines(ln.style, c.ClipLinesXY(path)...)
@@ -147,7 +164,7 @@ func (p *panel) drawGrid(c draw.Canvas, l lettering, nameX, nameY bool, left vg.
 		}
 	}
 	st = l.style(tickSize, text.XCenter, text.YTop)
-	for _, t := range p.x.ticks(min(12, tickRoom(c.Max.X-c.Min.X, 6*tickSize))) {
+	for _, t := range p.xTicks(st, c.Max.X-c.Min.X) {
 		s := p.x.share(t.value)
 		if s < -1e-9 || s > 1+1e-9 {
 			continue
@@ -232,7 +249,7 @@ func (b *band) shapes(xa, ya *axis, columns int) [][]point {
 	lower, upper := runs(xa, ya, b.x[:n], lo), runs(xa, ya, b.x[:n], hi)
 	var out [][]point
 	for i := range lower {
-		under, over := thin(lower[i], xa.lo, xa.hi, columns), thin(upper[i], xa.lo, xa.hi, columns)
+		under, over := thin(lower[i], xa, columns), thin(upper[i], xa, columns)
 		shape := append([]point{}, under...)
 		for k := len(over) - 1; k >= 0; k-- {
 			shape = append(shape, over[k])

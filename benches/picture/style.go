@@ -16,7 +16,6 @@ var (
 	black = color.NRGBA{0x00, 0x00, 0x00, 0xff}
 	grey  = color.NRGBA{0x55, 0x55, 0x55, 0xff}
 	pale  = color.NRGBA{0xe2, 0xe2, 0xe2, 0xff}
-	red   = color.NRGBA{0xD5, 0x5E, 0x00, 0xff} // vermillion: limits
 )
 
 func palette() []color.NRGBA {
@@ -48,7 +47,7 @@ func plainLine(c color.NRGBA) draw.LineStyle { return draw.LineStyle{Color: c, W
 
 // limitLine is the look of a limit.
 func limitLine() draw.LineStyle {
-	return draw.LineStyle{Color: red, Width: 1.4 * pt, Dashes: []vg.Length{3, 2}}
+	return draw.LineStyle{Color: grey, Width: 1.6 * pt, Dashes: []vg.Length{5, 2}}
 }
 
 func faint(c color.Color, alpha uint8) color.NRGBA {

@@ -26,14 +26,14 @@ func runs(xa, ya *axis, x, y []float64) [][]point {
 	return out
 }
 
-// thin keeps of all neighbouring points that fall into one of n columns
-// between lo and hi the first, the least, the greatest and the last. The lines
-// through what it keeps and through all points cover the same pixels.
-func thin(points []point, lo, hi float64, n int) []point {
-	if len(points) <= 4 || n < 1 || !(hi > lo) {
+// thin keeps of all neighbouring points that fall into one of n columns along
+// the axis the first, the least, the greatest and the last. The lines through
+// what it keeps and through all points cover the same pixels.
+func thin(points []point, xa *axis, n int) []point {
+	if len(points) <= 4 || n < 1 {
 		return points
 	}
-	column := func(p point) int { return int(math.Floor((p.x - lo) / (hi - lo) * float64(n))) }
+	column := func(p point) float64 { return math.Floor(xa.share(p.x) * float64(n)) }
 	out := points[:0:0]
 	for from := 0; from < len(points); {
 		to, at := from+1, column(points[from])

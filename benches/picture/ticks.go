@@ -56,7 +56,7 @@ func number(v, step float64) string {
 	case v == 0:
 		return "0"
 	case step == 0:
-		return strconv.FormatFloat(v, 'g', 4, 64)
+		return strings.ReplaceAll(strconv.FormatFloat(v, 'g', 4, 64), "-", "−")
 	case size >= 1e6 || step < 1e-5:
 		digits := max(0, int(math.Floor(math.Log10(size)))-int(math.Floor(math.Log10(step)+1e-9)))
 		return exponent(strconv.FormatFloat(v, 'e', min(digits, 12), 64))
