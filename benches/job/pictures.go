@@ -60,7 +60,23 @@ func drawCell(path string, c *cell.Cell, m *cell.Model) error {
 			cols.HalfGapV = row(func(z float64) float64 { g := v.Segment(z); return g.HalfGapV.At(z - g.Ref) }).Values
 		}
 	}
+	cols.OCV, cols.R0 = merged(cols.OCV), merged(cols.R0)
+	for j := range cols.Branches {
+		b := &cols.Branches[j]
+		b.Ohm, b.TauS = merged(b.Ohm), merged(b.TauS)
+	}
 	return drawTo(path, func(w io.Writer, f picture.Format) error { return picture.Cell(w, f, cols) })
+}
+
+// merged makes one row of rows that are the same at every temperature.
+func merged(rows []picture.CellRow) []picture.CellRow {
+	for _, r := range rows[1:] {
+		if !slices.Equal(r.Values, rows[0].Values) {
+			return rows
+		}
+	}
+	rows[0].TemperatureC = math.NaN()
+	return rows[:1]
 }
 
 // temperaturesOf returns the temperatures of a cell's tables, ascending; the

@@ -165,7 +165,7 @@ func errorTable(s *job.Summary) string {
 
 // replayTable shows each estimator on the one record.
 func replayTable(o *job.Outcome, s *job.Summary) string {
-	rows := [][]string{{"error, % SOC", "RMSE", "bias", "max", "settled", "end", "conv. s", "U mV", "NIS", "in 95 %", "ns"}}
+	rows := [][]string{{"error, % SOC", "RMSE", "bias", "max", "late", "end", "conv s", "U mV", "NIS", "cover", "ns"}}
 	for i := range o.Results {
 		r := &o.Results[i]
 		m := &r.Metrics
@@ -173,7 +173,8 @@ func replayTable(o *job.Outcome, s *job.Summary) string {
 			percent(m.EndError), seconds(m.ConvergeS), figure(1000 * m.VoltageRMSEV), figure(m.NISMean), figure(100 * m.Coverage95),
 			figure(s.Estimators[i].NsPerSample)})
 	}
-	return grid(rows) + "U: RMS of voltage minus prediction. settled: largest after settling.\n"
+	return grid(rows) + "late: largest after settling; conv: converged after; U: RMS of voltage minus\n" +
+		"prediction; cover: % of the time within 1.96 stated deviations; ns: a sample\n"
 }
 
 // honestyTable shows whether each estimator knows how wrong it is, how its
