@@ -5,6 +5,7 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"path/filepath"
 	"strings"
 	"testing"
 
@@ -252,5 +253,48 @@ func TestShowOfTheOtherCellsPulses(t *testing.T) {
 	}
 	if math.Abs(outAh-31.92) > 0.1 || math.Abs(inAh-30.87) > 0.1 {
 		t.Errorf("charge %g Ah out and %g Ah in, noted are 31.92 and 30.87", outAh, inAh)
+	}
+}
+
+// The recorded US06 current (as above) as a trace leg drives an invented cell
+// of twice the size: what is taken out of it is what the record counts.
+func TestRecordedCurrentAsATraceLeg(t *testing.T) {
+	record := testdata.Shared(t, "records/cell-a-25degC-us06-1s.csv")
+	maps, err := filepath.Abs("../../testdata/maps/cell-a.toml")
+	if err != nil {
+		t.Fatal(err)
+	}
+	w := newWorkplace(t, map[string]string{
+		"duty.toml": fmt.Sprintf("format = \"soctrial/duty/1\"\nname = \"recorded drive\"\nleg = [{ kind = \"trace\", file = %q, map = %q }]\n", record, maps),
+		"cell.toml": strings.Replace(cellText, "capacity_ah = 2.0", "capacity_ah = 5.8", 1),
+		"plan.toml": strings.NewReplacer("count = 64", "", `"sobol"`, `"list"`,
+			"[{ column = \"current_offset_a\", between = [-0.1, 0.1] }, { column = \"soc_start_error\", between = [-0.1, 0.1] }]",
+			`[{ column = "soc_start", values = [1.0, 0.9] }]`).Replace(planText),
+	})
+	w.draw()
+	o := w.options("out")
+	o.Traces = "all"
+	out, err := Run(context.Background(), o)
+	if err != nil {
+		t.Fatal(err)
+	}
+	r, _, err := readRecord(record, maps, false, false)
+	if err != nil {
+		t.Fatal(err)
+	}
+	for _, res := range out.Results {
+		trace, err := store.ReadTraces(w.path("out/traces.parquet"), res.ScenarioID, res.Estimator)
+		if err != nil {
+			t.Fatal(err)
+		}
+		n := len(trace.TimeS)
+		if res.Reason != "" || math.Abs(trace.TimeS[n-1]-r.TimeS[r.Len()-1]) > 1 {
+			t.Errorf("scenario %d ends at %g s (%s), the record at %g s", res.ScenarioID, trace.TimeS[n-1], res.Reason, r.TimeS[r.Len()-1])
+		}
+		// Each current holds until the next; eta of the cell is 1.
+		outAh, inAh := chargeMoved(&r.Readings)
+		if got := (trace.SOCTrue[0] - trace.SOCTrue[n-1]) * 5.8; res.ScenarioID == 2 && math.Abs(got-(outAh-inAh)) > 1e-3 {
+			t.Errorf("scenario %d: %g Ah were taken out, the record counts %g Ah", res.ScenarioID, got, outAh-inAh)
+		}
 	}
 }

@@ -64,7 +64,7 @@ func run(args []string, stdout, stderr io.Writer) (status int) {
 	root.SetOut(out)
 	root.SetErr(stderr)
 	err := root.ExecuteContext(ctx)
-	if err == nil && out.err != nil {
+	if out.err != nil {
 		err = toolError{fmt.Errorf("writing to standard output: %w", out.err)}
 	}
 	status = statusOf(err)
