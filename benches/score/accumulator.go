@@ -46,13 +46,13 @@ type errorSums struct {
 // zero value is to be Reset before use; it is reused between runs and
 // allocates nothing.
 type Accumulator struct {
-	set      Settings
-	samples  int64
-	startS   float64 // time of the first sample
-	lastS    float64 // time of the last sample
-	periodS  float64 // 0: uneven
-	duration float64 // NaN: not told
-	limited  float64
+	set       Settings
+	samples   int64
+	startS    float64 // time of the first sample
+	lastS     float64 // time of the last sample
+	periodS   float64 // 0: uneven
+	durationS float64 // NaN: not told
+	limited   float64
 
 	unsettled, settled errorSums
 	lowMax             float64 // negative: none yet
@@ -78,7 +78,7 @@ func (a *Accumulator) Reset(s Settings) {
 	nan := math.NaN()
 	a.set = s
 	a.samples, a.startS, a.lastS, a.periodS = 0, 0, 0, 0
-	a.duration, a.limited = nan, 0
+	a.durationS, a.limited = nan, 0
 	a.unsettled, a.settled = errorSums{max: -1}, errorSums{max: -1}
 	a.lowMax, a.stepMax, a.last, a.before = -1, -1, nan, nan
 	a.innovation, a.nis, a.nees = sum{}, sum{}, sum{}
@@ -92,7 +92,7 @@ func (a *Accumulator) Reset(s Settings) {
 // demand back; without it duration_s is the time the samples stand for and
 // limited_s is 0.
 func (a *Accumulator) SetDuration(durationS, limitedS float64) {
-	a.duration, a.limited = durationS, limitedS
+	a.durationS, a.limited = durationS, limitedS
 }
 
 // Add scores the next block. truth and est are of one length; est may be a
@@ -313,7 +313,7 @@ func (a *Accumulator) Metrics() Metrics {
 		NEESMean:       mean(a.nees.value(), a.neesW.value()),
 		Coverage95:     mean(a.coverIn.value(), a.coverW.value()),
 		Samples:        a.samples,
-		DurationS:      a.duration,
+		DurationS:      a.durationS,
 		LimitedS:       a.limited,
 	}
 	m.SOCP95Abs = min(m.SOCP95Abs, m.SOCMaxAbs) // a bin's parts may lie above its only size
@@ -324,8 +324,8 @@ func (a *Accumulator) Metrics() Metrics {
 			m.DurationS = endS - a.startS
 		}
 	}
-	if !math.IsNaN(a.duration) {
-		endS = min(endS, a.startS+a.duration)
+	if !math.IsNaN(a.durationS) {
+		endS = min(endS, a.startS+a.durationS)
 	}
 	if math.IsNaN(m.ConvergeS) && a.streakS+a.set.ConvergeHoldS <= endS {
 		m.ConvergeS = a.streakS - a.startS
