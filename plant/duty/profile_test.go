@@ -112,13 +112,30 @@ func TestDynamicStressTest(t *testing.T) {
 	}
 }
 
-// The driving cycle against the regulation's operations at each second, its
-// distance, duration and top speed (UN R83; testdata).
+// The driving cycle against the regulation's operations, and at each second;
+// its distance, duration and top speed (UN R83; testdata).
 func TestNEDC(t *testing.T) {
 	timeS, speed := duty.NEDC()
 	kmh := column(t, testdata.Reference(t, "cycle_nedc_1hz.csv"), "speed_kmh")
 	if len(speed) != 1181 || len(kmh) != 1181 || timeS[1180] != 1180 {
 		t.Fatalf("%d speeds to %g s, %d in the table", len(speed), timeS[len(timeS)-1], len(kmh))
+	}
+	ops := testdata.Reference(t, "cycle_nedc_operations.csv")
+	end, durations, at := column(t, ops, "end_speed_kmh"), column(t, ops, "duration_s"), 0
+	for part := range 5 { // four times the urban cycle, then the other
+		first, last := 0, 25
+		if part == 4 {
+			first, last = 25, len(end)
+		}
+		for k := first; k < last; k++ {
+			at += int(durations[k])
+			if math.Abs(speed[at]*3.6-end[k]) > 1e-9 {
+				t.Errorf("operation %d ends at %d s with %g km/h, table %g", k+1, at, speed[at]*3.6, end[k])
+			}
+		}
+	}
+	if at != 1180 {
+		t.Errorf("operations last %d s", at)
 	}
 	distance, top := 0.0, 0.0
 	for k, v := range speed {
@@ -177,8 +194,8 @@ func TestHybridPulseTest(t *testing.T) {
 	}
 }
 
-// Published driving schedules read in place: duration, distance and top speed
-// against the published figures, and what of the kinetic energy is left over a
+// Published driving schedules read in place: the distance against the published
+// one (40 CFR 86 App. I, 40 CFR 600 App. I, UN GTR 15), and what of the kinetic energy is left over a
 // stop-to-stop cycle (none) and of the drag.
 func TestPublishedSpeedTraces(t *testing.T) {
 	for _, c := range []struct {
