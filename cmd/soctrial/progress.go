@@ -6,6 +6,7 @@ import (
 	"log/slog"
 	"os"
 	"sync"
+	"sync/atomic"
 	"time"
 
 	"github.com/vbauerster/mpb/v8"
@@ -21,14 +22,14 @@ const quietEvery = 30 * time.Second
 // progress shows how far a job is: a bar on a terminal, now and then a line in
 // a log.
 type progress struct {
-	w io.Writer
+	w      io.Writer
+	latest atomic.Pointer[job.Progress] // read while a bar is drawn
 
 	mu       sync.Mutex
 	terminal bool
 	bars     *mpb.Progress
 	bar      *mpb.Bar
 	stage    string
-	latest   job.Progress
 	log      *slog.Logger
 	lastLine time.Time
 }
@@ -43,7 +44,7 @@ func isTerminal(w io.Writer) bool {
 }
 
 // reporter hands a job what it tells its progress to.
-func (p *progress) reporter(s streams) job.Reporter {
+func (p *progress) reporter() job.Reporter {
 	return job.Reporter{Progress: p.show, Warn: p.warn}
 }
 
@@ -64,9 +65,9 @@ func (p *progress) warn(text string) {
 }
 
 func (p *progress) show(now job.Progress) {
+	p.latest.Store(&now)
 	p.mu.Lock()
 	defer p.mu.Unlock()
-	p.latest = now
 	if p.terminal {
 		p.showBar(now)
 		return
@@ -96,11 +97,8 @@ func (p *progress) showBar(now job.Progress) {
 
 // tail is the end of the bar's line: rate and time left.
 func (p *progress) tail() string {
-	if !p.mu.TryLock() { // the bar is being changed: say nothing this time
-		return ""
-	}
-	defer p.mu.Unlock()
-	return fmt.Sprintf(" %s, %s left", rate(p.latest), left(p.latest))
+	now := *p.latest.Load()
+	return fmt.Sprintf(" %s, %s left", rate(now), left(now))
 }
 
 // rate says how fast it goes.
@@ -128,13 +126,13 @@ func left(p job.Progress) time.Duration {
 // done leaves the terminal as other output wants it.
 func (p *progress) done() {
 	p.mu.Lock()
-	bars, bar, finished := p.bars, p.bar, p.latest.Done >= p.latest.Total
+	bars, bar := p.bars, p.bar
 	p.bars = nil
 	p.mu.Unlock()
 	if bars == nil {
 		return
 	}
-	if finished {
+	if now := p.latest.Load(); now.Done >= now.Total {
 		bar.SetTotal(-1, true)
 	} else {
 		bar.Abort(false)

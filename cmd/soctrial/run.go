@@ -41,7 +41,7 @@ call is wrong, 3 the tool failed, 130 interrupted.
 		RunE: func(cmd *cobra.Command, args []string) error {
 			o.SetPath = args[0]
 			p := newProgress(s.err)
-			o.Report = p.reporter(s)
+			o.Report = p.reporter()
 			out, err := job.Run(cmd.Context(), o)
 			p.done()
 			if out != nil {
