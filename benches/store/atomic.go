@@ -32,22 +32,9 @@ func (d disk) writeFile(path string, write func(w io.Writer) error) error {
 	}
 	defer f.abort() // does nothing once the file is in place
 	if err := write(f); err != nil {
-		return fmt.Errorf("store: writing %s: %w", path, errors.Unwrap(&cause{err}))
+		return f.failed(err)
 	}
 	return f.commit()
-}
-
-// cause strips what the operating system says about the temporary name, which
-// means nothing to who asked for the file.
-type cause struct{ err error }
-
-func (c *cause) Error() string { return c.err.Error() }
-func (c *cause) Unwrap() error {
-	var p *fs.PathError
-	if errors.As(c.err, &p) {
-		return p.Err
-	}
-	return c.err
 }
 
 // pending is a file that does not stand at its path yet.
@@ -63,7 +50,11 @@ func (d disk) create(path string) (*pending, error) {
 	}
 	f, err := os.CreateTemp(filepath.Dir(path), "."+filepath.Base(path)+".*.part")
 	if err != nil {
-		return nil, fmt.Errorf("store: cannot write %s: %w", path, errors.Unwrap(&cause{err}))
+		var at *fs.PathError
+		if errors.As(err, &at) {
+			err = at.Err
+		}
+		return nil, fmt.Errorf("store: cannot write %s: %w", path, err)
 	}
 	var w io.Writer = f
 	if d.through != nil {
@@ -92,10 +83,24 @@ func (p *pending) commit() error {
 		err = os.Rename(p.file.Name(), p.path)
 	}
 	if err != nil {
-		return fmt.Errorf("store: writing %s: %w", p.path, errors.Unwrap(&cause{err}))
+		return p.failed(err)
 	}
 	p.file = nil
 	return syncFolder(filepath.Dir(p.path))
+}
+
+// failed says that writing failed, without the temporary name, which means
+// nothing to who asked for the file.
+func (p *pending) failed(err error) error {
+	var at *fs.PathError
+	var link *os.LinkError
+	switch {
+	case errors.As(err, &at) && p.file != nil && at.Path == p.file.Name():
+		err = at.Err
+	case errors.As(err, &link):
+		err = link.Err
+	}
+	return fmt.Errorf("store: writing %s: %w", p.path, err)
 }
 
 // abort removes the temporary file if it still stands.

@@ -75,7 +75,7 @@ func writeResults(d disk, path string, rows []score.Result, meta ResultsMeta) er
 		return fmt.Errorf("store: writing %s: %w", path, err)
 	}
 	return d.writeFile(path, func(w io.Writer) error {
-		return fenced(path, func() error { return putResults(w, rows, kv) })
+		return fencedWrite(func() error { return putResults(w, rows, kv) })
 	})
 }
 

@@ -50,7 +50,7 @@ func writeSet(d disk, path string, s *scenario.Set) error {
 		meta[prefix+k+hashSuffix] = hashOf([]byte(text))
 	}
 	return d.writeFile(path, func(w io.Writer) error {
-		return fenced(path, func() error { return putSet(w, s.Rows, labels, meta) })
+		return fencedWrite(func() error { return putSet(w, s.Rows, labels, meta) })
 	})
 }
 

@@ -55,6 +55,16 @@ func fenced(path string, f func() error) (err error) {
 	return f()
 }
 
+// fencedWrite is fenced for writing.
+func fencedWrite(f func() error) (err error) {
+	defer func() {
+		if r := recover(); r != nil {
+			err = fmt.Errorf("the Parquet library cannot write this: %v", r)
+		}
+	}()
+	return f()
+}
+
 // withTable opens the file at path, runs f inside the fence and closes it.
 func withTable(path string, f func(*table) error) error {
 	in, err := os.Open(path)

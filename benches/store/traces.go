@@ -2,7 +2,6 @@ package store
 
 import (
 	"fmt"
-	"math"
 
 	"github.com/parquet-go/parquet-go"
 )
@@ -101,10 +100,7 @@ func newTraceWriter(d disk, path string, thin bool, meta TraceMeta) (*TraceWrite
 	if meta.SetSHA256 != "" {
 		kv[setHashKey] = meta.SetSHA256
 	}
-	if err := fenced(path, func() error { w.table = newTableWriter(p, "traces", specs, kv); return nil }); err != nil {
-		p.abort()
-		return nil, err
-	}
+	w.table = newTableWriter(p, "traces", specs, kv)
 	return w, nil
 }
 
@@ -112,8 +108,8 @@ func newTraceWriter(d disk, path string, thin bool, meta TraceMeta) (*TraceWrite
 // columns are free again when it returns. After an error only Abort is of use.
 func (w *TraceWriter) Append(scenarioID int64, estimator string, first int64, c *TraceColumns) error {
 	if w.err == nil {
-		if err := fenced(w.path, func() error { return w.add(scenarioID, estimator, first, c) }); err != nil {
-			w.err = fmt.Errorf("store: writing %s: %w", w.path, (&cause{err}).Unwrap())
+		if err := fencedWrite(func() error { return w.add(scenarioID, estimator, first, c) }); err != nil {
+			w.err = w.pending.failed(err)
 		}
 	}
 	return w.err
@@ -139,17 +135,7 @@ func (w *TraceWriter) add(id int64, estimator string, first int64, c *TraceColum
 		}
 	}
 	for k, col := range w.columns[1:] {
-		x := *col.at(c)
-		value := func(i int) parquet.Value {
-			switch {
-			case i >= len(x) || math.IsNaN(x[i]):
-				return parquet.NullValue()
-			case w.thin:
-				return parquet.FloatValue(float32(x[i]))
-			}
-			return parquet.DoubleValue(x[i])
-		}
-		if err := w.table.column(len(fixed)+k, n, value); err != nil {
+		if err := w.table.numbers(len(fixed)+k, n, *col.at(c), w.thin); err != nil {
 			return err
 		}
 	}
@@ -167,8 +153,8 @@ func (w *TraceWriter) Close() error {
 	if w.err != nil || w.pending.file == nil {
 		return w.err
 	}
-	if err := fenced(w.path, w.table.w.Close); err != nil {
-		w.err = fmt.Errorf("store: writing %s: %w", w.path, (&cause{err}).Unwrap())
+	if err := fencedWrite(w.table.w.Close); err != nil {
+		w.err = w.pending.failed(err)
 		return w.err
 	}
 	w.err = w.pending.commit()

@@ -110,31 +110,64 @@ func newTableWriter(w io.Writer, name string, specs []columnSpec, meta map[strin
 	return &tableWriter{w: pw, specs: specs}
 }
 
-// column writes n values of column c into the current row group.
-func (t *tableWriter) column(c, n int, at func(i int) parquet.Value) error {
-	const most = 1024
+// chunkLen is how many values are handed to the library at once.
+const chunkLen = 1024
+
+// put writes n values of column c into the current row group, fill by fill.
+func (t *tableWriter) put(c, n int, fill func(chunk []parquet.Value, from int)) error {
 	if t.chunk == nil {
-		t.chunk = make([]parquet.Value, most)
+		t.chunk = make([]parquet.Value, chunkLen)
 	}
-	to, level := t.w.ColumnWriters()[c], 0
-	if t.specs[c].node.Optional() {
-		level = 1
-	}
-	for from := 0; from < n; from += most {
-		chunk := t.chunk[:min(most, n-from)]
-		for i := range chunk {
-			v := at(from + i)
-			if v.IsNull() {
-				chunk[i] = v.Level(0, 0, c)
-			} else {
-				chunk[i] = v.Level(0, level, c)
-			}
-		}
+	to := t.w.ColumnWriters()[c]
+	for from := 0; from < n; from += chunkLen {
+		chunk := t.chunk[:min(chunkLen, n-from)]
+		fill(chunk, from)
 		if _, err := to.WriteRowValues(chunk); err != nil {
 			return fmt.Errorf("column %s: %w", t.specs[c].name, err)
 		}
 	}
 	return nil
+}
+
+// column writes n values of column c.
+func (t *tableWriter) column(c, n int, at func(i int) parquet.Value) error {
+	level := t.level(c)
+	return t.put(c, n, func(chunk []parquet.Value, from int) {
+		for i := range chunk {
+			if v := at(from + i); v.IsNull() {
+				chunk[i] = v.Level(0, 0, c)
+			} else {
+				chunk[i] = v.Level(0, level, c)
+			}
+		}
+	})
+}
+
+// numbers writes n values of the nullable column c: x as far as it goes and
+// where it is a number, else null.
+func (t *tableWriter) numbers(c, n int, x []float64, thin bool) error {
+	level, null := t.level(c), parquet.NullValue().Level(0, 0, c)
+	return t.put(c, n, func(chunk []parquet.Value, from int) {
+		have := x[min(from, len(x)):]
+		for i := range chunk {
+			switch {
+			case i >= len(have) || math.IsNaN(have[i]):
+				chunk[i] = null
+			case thin:
+				chunk[i] = parquet.FloatValue(float32(have[i])).Level(0, level, c)
+			default:
+				chunk[i] = parquet.DoubleValue(have[i]).Level(0, level, c)
+			}
+		}
+	})
+}
+
+// level is the definition level of a value of column c that is there.
+func (t *tableWriter) level(c int) int {
+	if t.specs[c].node.Optional() {
+		return 1
+	}
+	return 0
 }
 
 // numberOrNull returns x, or null where it is NaN.
