@@ -257,29 +257,34 @@ func writeLimits(b *strings.Builder, s *job.Summary, st style) {
 		if l.Limit.Group != "" {
 			of = ", group " + l.Limit.Group
 		}
-		fmt.Fprintf(b, "  %s  |%s| ≤ %g in %.4g %% of scenarios%s: %s\n", verdictWord(l.Verdict, st), l.Limit.Metric, l.Limit.AtMost,
-			100*l.Limit.Share, of, l.Estimator)
-		wrapped(b, "              ", l.Why)
+		var line strings.Builder
+		wrapped(&line, fmt.Sprintf("  %-11s  ", verdictWord(l.Verdict)), fmt.Sprintf("|%s| ≤ %g in %.4g %% of scenarios%s: %s",
+			l.Limit.Metric, l.Limit.AtMost, 100*l.Limit.Share, of, l.Estimator))
+		b.WriteString(strings.Replace(line.String(), verdictWord(l.Verdict), st.verdict(l.Verdict), 1))
+		wrapped(b, "               ", l.Why)
 		if l.Verdict == score.Pass {
 			continue
 		}
 		if !math.IsNaN(l.Worst) {
-			fmt.Fprintf(b, "              worst %.4g in scenario %d\n", l.Worst, l.WorstID)
+			fmt.Fprintf(b, "               worst %.4g in scenario %d\n", l.Worst, l.WorstID)
 		}
 		for _, c := range l.Because {
-			wrapped(b, "              why: ", c.String())
+			wrapped(b, "               why: ", c.String())
 		}
 	}
 }
 
-func verdictWord(v score.Verdict, st style) string {
-	switch v {
-	case score.Pass:
-		return st.paint("pass       ", text.FgGreen)
-	case score.Fail:
-		return st.paint("FAIL       ", text.FgRed)
+func verdictWord(v score.Verdict) string {
+	if v == score.Fail {
+		return "FAIL"
 	}
-	return st.paint("cannot tell", text.FgYellow)
+	return string(v)
+}
+
+// verdict paints a verdict.
+func (s style) verdict(v score.Verdict) string {
+	colour := map[score.Verdict]text.Color{score.Pass: text.FgGreen, score.Fail: text.FgRed, score.CannotTell: text.FgYellow}
+	return s.paint(verdictWord(v), colour[v])
 }
 
 // writeWorst shows the worst scenarios and what is special about them.
