@@ -154,3 +154,28 @@ func TestForeignSetRefused(t *testing.T) {
 		}
 	})
 }
+
+// A vehicle's record as a database exports it: scaled decimals, small
+// numbers, a null, its own names and units.
+func TestForeignRecord(t *testing.T) {
+	path := written(t, `SELECT CAST(100 * i AS INTEGER) AS "Time [ms]", CAST(i AS DECIMAL(9,3)) / 4 AS "Current(A)",
+		CASE WHEN i = 2 THEN NULL ELSE CAST(3400 + i AS USMALLINT) END AS "Voltage(mV)", CAST(25 AS TINYINT) AS "Temp_degC", 'run' AS mode
+		FROM range(0, 3000) AS r(i)`, ", COMPRESSION zstd, ROW_GROUP_SIZE 2048")
+	r, told, err := store.ReadRecord(path, store.RecordOptions{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if r.Len() != 3000 {
+		t.Fatalf("%d rows; %v", r.Len(), told)
+	}
+	for i := range 3000 {
+		volts := (3400 + float64(i)) / 1000
+		if i == 2 {
+			volts = math.NaN()
+		}
+		if v := r.VoltageV[i]; v != volts && !(v != v && volts != volts) || r.TimeS[i] != float64(100*i)/1000 ||
+			r.CurrentA[i] != float64(i)/4 || r.TemperatureC[i] != 25 {
+			t.Fatalf("row %d: %g s %g A %g V %g °C", i, r.TimeS[i], r.CurrentA[i], v, r.TemperatureC[i])
+		}
+	}
+}

@@ -106,12 +106,16 @@ func TestSetIsReadBack(t *testing.T) {
 	if len(got) != len(s.Rows) {
 		t.Fatalf("DuckDB reads %d rows of %d", len(got), len(s.Rows))
 	}
+	known := map[string]scenario.Column{}
+	for _, c := range scenario.Columns() {
+		known[c.Name] = c
+	}
 	for i := range s.Rows {
 		r := &s.Rows[i]
 		for _, name := range names {
 			where := fmt.Sprintf("row %d, %s", i, name)
-			c, known := scenario.Find(name)
-			if !known {
+			c, ok := known[name]
+			if !ok {
 				continue
 			}
 			v := c.Get(r)
