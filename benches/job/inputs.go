@@ -29,7 +29,6 @@ type runInputs struct {
 	setBytes []byte // the file
 	specs    []estimator.Spec
 	meta     store.ResultsMeta // of the results: all that can change a number
-	longest  []float64         // durations of its runs, s, where they are known
 }
 
 func loadRun(o *RunOptions) (*runInputs, error) {

@@ -131,16 +131,21 @@ func drawRecord(path string, r *record.Record) error {
 	return drawTo(path, func(w io.Writer, f picture.Format) error { return picture.Record(w, f, cols) })
 }
 
-// drawTraces shows the first scenario of a traces file, by all its estimators.
-func drawTraces(path, from string, keys []store.TraceKey) error {
+// drawTraces shows one scenario of a traces file by all its estimators, the
+// first where id is negative.
+func drawTraces(path, from string, id int64, keys []store.TraceKey) error {
 	if len(keys) == 0 {
 		return wrongf("%s: holds no trace to draw", from)
 	}
-	cols := picture.TrackColumns{Title: fmt.Sprintf("Scenario %d", keys[0].ScenarioID), Note: "Current is positive on discharge."}
+	if id < 0 {
+		id = keys[0].ScenarioID
+	}
+	keys = slices.DeleteFunc(slices.Clone(keys), func(k store.TraceKey) bool { return k.ScenarioID != id })
+	if len(keys) == 0 {
+		return wrongf("--scenario: found %d, which %s does not trace", id, from)
+	}
+	cols := picture.TrackColumns{Title: fmt.Sprintf("Scenario %d", id), Note: "Current is positive on discharge."}
 	for _, k := range keys {
-		if k.ScenarioID != keys[0].ScenarioID {
-			continue
-		}
 		t, err := store.ReadTraces(from, k.ScenarioID, k.Estimator)
 		if err != nil {
 			return wrong(err)

@@ -42,6 +42,7 @@ type ShowOptions struct {
 	ChargePositive bool
 	Repair         bool
 	PicturePath    string // a .png or .svg to draw into; empty: none
+	Scenario       int64  // whose traces to draw; negative: the first in the file
 	Force          bool   // replace a picture that exists
 }
 

@@ -188,7 +188,7 @@ func showTraces(o *ShowOptions) (*Shown, error) {
 	}
 	s.Tables = append(s.Tables, ShownTable{"Traces", rows})
 	if o.PicturePath != "" {
-		return s, drawTraces(o.PicturePath, o.Path, keys)
+		return s, drawTraces(o.PicturePath, o.Path, o.Scenario, keys)
 	}
 	return s, nil
 }

@@ -53,6 +53,7 @@ a duty's legs, what a record spans. A results folder shows its results.
 	}
 	f := cmd.Flags()
 	f.StringVar(&o.PicturePath, "picture", "", "draw it into this .png or .svg")
+	f.Int64Var(&o.Scenario, "scenario", -1, "whose traces to draw; else the first")
 	f.StringVar(&o.MapPath, "map", "", "how a record's columns read")
 	f.BoolVar(&o.ChargePositive, "charge-positive", false, "the record counts charging as positive")
 	f.BoolVar(&o.Repair, "repair", false, "leave a record's samples out whose time runs backward")
