@@ -1,9 +1,11 @@
 package define
 
 import (
+	"errors"
 	"fmt"
 	"math"
 	"slices"
+	"strings"
 
 	"soctrial/plant/duty"
 	"soctrial/plant/record"
@@ -47,19 +49,18 @@ func Duty(file string, text []byte, o Openers) (*duty.Duty, error) {
 }
 
 func legs(t *table, o Openers) []duty.Leg {
-	list := t.tables("leg")
-	if len(list) == 0 && !t.has("leg") {
-		t.missing("leg", "at least one leg")
+	if !t.has("leg") {
+		t.missing("leg", "a list of legs")
 	}
 	var out []duty.Leg
-	for _, l := range list {
+	for _, l := range t.tables("leg") {
 		out = append(out, leg(l, o))
-		l.finish()
 	}
 	return out
 }
 
-// legKeys are the numbers of a leg, by key.
+// legNumbers are the numbers of a leg that stand under one key whatever its
+// kind.
 func legNumbers(l *duty.Leg) map[string]*float64 {
 	return map[string]*float64{
 		"duration_s": &l.DurationS, "until_soc": &l.UntilSOC, "until_voltage_v": &l.UntilVoltageV,
@@ -81,55 +82,49 @@ func leg(t *table, o Openers) duty.Leg {
 		kinds = append(kinds, string(k))
 	}
 	l := duty.Leg{CurrentA: math.NaN(), PowerW: math.NaN()}
-	if !t.has("kind") {
-		t.missing("kind", "one of "+quoted(kinds))
-	}
-	l.Kind = duty.Kind(t.word("kind", kinds...))
+	l.Kind = duty.Kind(t.needWord("kind", kinds...))
 	numbers := legNumbers(&l)
 	for _, k := range legKeyOrder() {
 		*numbers[k] = t.number(k, math.NaN())
 	}
-	l.Repeat = positiveWhole(t, "repeat")
-	l.Count = positiveWhole(t, "count")
+	l.Repeat = t.whole("repeat", 0, 1)
+	l.Count = t.whole("count", 0, 1)
 	l.AtLimit = duty.AtLimit(t.word("at_limit", string(duty.Cut), string(duty.End)))
-	l.ProfileName = t.text("name", false)
+	l.ProfileName = t.text("name")
 	l.TimeS = t.numbers("time_s")
 	l.SpeedMps = t.numbers("speed_mps")
-	if l.Kind == duty.Trace {
+	switch l.Kind {
+	case duty.Trace:
 		l.TraceA, l.TraceW = t.numbers("current_a"), t.numbers("power_w")
-	} else {
+	case "": // unknown: whether numbers or lists stand here cannot be judged
+		t.get("current_a")
+		t.get("power_w")
+	default:
 		l.CurrentA, l.PowerW = t.number("current_a", math.NaN()), t.number("power_w", math.NaN())
 	}
 	if v := t.table("vehicle"); v != nil {
 		l.Vehicle = vehicle(v)
 	}
-	l.File = t.text("file", false)
-	mapFile := t.text("map", false)
-	if l.File != "" {
+	l.File = t.text("file")
+	mapFile := t.text("map")
+	switch {
+	case l.File != "":
 		traceFile(t, &l, mapFile, o)
-	} else if mapFile != "" {
-		t.fail("map", fmt.Sprintf("%q", mapFile), "a map only beside a file")
+	case t.has("map"):
+		t.failOnce("map", fmt.Sprintf("%q", mapFile), "a map only beside a file")
+	case t.has("file"):
+		t.failOnce("file", `""`, "a path beside the duty's file")
 	}
 	if t.has("leg") {
 		l.Legs = legs(t, o)
 	} else {
 		t.get("leg")
 	}
+	t.finish()
 	return l
 }
 
-func positiveWhole(t *table, key string) int {
-	if !t.has(key) {
-		t.get(key)
-		return 0
-	}
-	n := t.whole(key, 1)
-	if n < 1 {
-		t.fail(key, fmt.Sprint(n), "a whole number ≥ 1")
-	}
-	return n
-}
-
+// traceFile reads the columns of a leg from the file it names.
 func traceFile(t *table, l *duty.Leg, mapFile string, o Openers) {
 	if l.Kind != duty.Trace && l.Kind != duty.Speed {
 		t.fail("file", fmt.Sprintf("%q", l.File), `a file only in a leg of kind "trace" or "speed"`)
@@ -137,38 +132,68 @@ func traceFile(t *table, l *duty.Leg, mapFile string, o Openers) {
 	}
 	for _, k := range []string{"time_s", "current_a", "power_w", "speed_mps"} {
 		if t.has(k) {
-			t.fail(k, "columns beside a file", "either inline columns or a file")
+			t.failOnce(k, "columns beside a file", "either inline columns or a file")
 			return
 		}
 	}
 	if o.Trace == nil {
-		t.fail("file", fmt.Sprintf("%q", l.File), "columns inline: files cannot be read here")
+		t.fail("file", fmt.Sprintf("%q", l.File), "columns inline: no file can be read from here")
 		return
 	}
-	var m *record.Map
-	if mapFile != "" {
-		text, err := o.Map(mapFile)
-		if err == nil {
-			m, err = Map(mapFile, text)
-		}
-		if err != nil {
-			t.fail("map", err.Error(), "a readable map")
-			return
-		}
+	m, err := traceMap(mapFile, o)
+	if err != nil {
+		t.blame("map", err)
+		return
 	}
 	trace, err := o.Trace(l.File, m, l.Kind)
 	if err != nil {
-		t.fail("file", err.Error(), "a readable trace")
+		t.blame("file", err)
 		return
 	}
 	l.TimeS = slices.Clone(trace.TimeS)
-	if len(l.TimeS) > 0 {
-		first := l.TimeS[0]
-		for k := range l.TimeS {
-			l.TimeS[k] -= first
-		}
+	for k := range l.TimeS {
+		l.TimeS[k] -= trace.TimeS[0]
 	}
 	l.TraceA, l.TraceW, l.SpeedMps = trace.CurrentA, trace.PowerW, trace.SpeedMps
+	if err := checkTrace(l); err != nil {
+		t.blame("file", fmt.Errorf("%s: %w", l.File, err))
+	}
+}
+
+func traceMap(file string, o Openers) (*record.Map, error) {
+	if file == "" {
+		return nil, nil
+	}
+	if o.Map == nil {
+		return nil, fmt.Errorf("found %q, allowed is no map: no file can be read from here", file)
+	}
+	text, err := o.Map(file)
+	if err != nil {
+		return nil, err
+	}
+	return Map(file, text)
+}
+
+// checkTrace judges columns alone, so that a fault in them is put down to
+// their file.
+func checkTrace(l *duty.Leg) error {
+	bare := duty.Leg{Kind: l.Kind, TimeS: l.TimeS, TraceA: l.TraceA, TraceW: l.TraceW, SpeedMps: l.SpeedMps}
+	for _, x := range legNumbers(&bare) {
+		*x = math.NaN()
+	}
+	bare.CurrentA, bare.PowerW = math.NaN(), math.NaN()
+	err := (&duty.Duty{Legs: []duty.Leg{bare}, Vehicle: &duty.Vehicle{MassKg: 1, AirDensityKgPerM3: 1, DriveEfficiency: 1,
+		Series: 1, Parallel: 1}}).Validate()
+	var k keyed
+	if errors.As(err, &k) {
+		if _, rest, ok := strings.Cut(k.Error(), k.KeyPath()+": "); ok {
+			if column, ok := strings.CutPrefix(k.KeyPath(), "leg[0]."); ok {
+				rest = column + ": " + rest
+			}
+			return errors.New(rest)
+		}
+	}
+	return err
 }
 
 func vehicle(t *table) *duty.Vehicle {
@@ -182,8 +207,8 @@ func vehicle(t *table) *duty.Vehicle {
 		DriveEfficiency:        t.number("drive_efficiency", 1),
 		RegenerationEfficiency: t.number("regeneration_efficiency", 0),
 		AuxiliaryW:             t.number("auxiliary_w", 0),
-		Series:                 t.whole("series", 1),
-		Parallel:               t.whole("parallel", 1),
+		Series:                 t.whole("series", 1, 1),
+		Parallel:               t.whole("parallel", 1, 1),
 	}
 	t.finish()
 	return v

@@ -1,6 +1,7 @@
 package define
 
 import (
+	"fmt"
 	"math"
 	"slices"
 
@@ -10,36 +11,46 @@ import (
 // estimatorKey is one number of an estimator file.
 type estimatorKey struct {
 	section, key string
+	positive     bool // > 0; else ≥ 0
 	to           func(*estimator.Spec) *float64
+}
+
+func (k *estimatorKey) path() string { return k.section + "." + k.key }
+
+func (k *estimatorKey) allowed() string {
+	if k.positive {
+		return "a finite number > 0"
+	}
+	return "a finite number ≥ 0"
 }
 
 func estimatorKeys() []estimatorKey {
 	return []estimatorKey{
-		{"start", "soc_std", func(s *estimator.Spec) *float64 { return &s.SOCStd }},
-		{"start", "branch_std_v", func(s *estimator.Spec) *float64 { return &s.BranchStdV }},
-		{"process", "soc_std_per_sqrt_s", func(s *estimator.Spec) *float64 { return &s.SOCStdPerSqrtS }},
-		{"process", "branch_std_v_per_sqrt_s", func(s *estimator.Spec) *float64 { return &s.BranchStdVPerSqrtS }},
-		{"measurement", "voltage_std_v", func(s *estimator.Spec) *float64 { return &s.VoltageStdV }},
-		{"measurement", "current_std_a", func(s *estimator.Spec) *float64 { return &s.CurrentStdA }},
-		{"rest", "current_below_a", func(s *estimator.Spec) *float64 { return &s.RestCurrentBelowA }},
-		{"rest", "after_s", func(s *estimator.Spec) *float64 { return &s.RestAfterS }},
+		{"start", "soc_std", false, func(s *estimator.Spec) *float64 { return &s.SOCStd }},
+		{"start", "branch_std_v", false, func(s *estimator.Spec) *float64 { return &s.BranchStdV }},
+		{"process", "soc_std_per_sqrt_s", false, func(s *estimator.Spec) *float64 { return &s.SOCStdPerSqrtS }},
+		{"process", "branch_std_v_per_sqrt_s", false, func(s *estimator.Spec) *float64 { return &s.BranchStdVPerSqrtS }},
+		{"measurement", "voltage_std_v", true, func(s *estimator.Spec) *float64 { return &s.VoltageStdV }},
+		{"measurement", "current_std_a", false, func(s *estimator.Spec) *float64 { return &s.CurrentStdA }},
+		{"rest", "current_below_a", true, func(s *estimator.Spec) *float64 { return &s.RestCurrentBelowA }},
+		{"rest", "after_s", true, func(s *estimator.Spec) *float64 { return &s.RestAfterS }},
 	}
 }
 
-// estimatorKind says which numbers a kind takes. One that is neither needed
-// nor given is 0, or NaN where the kind tells the two apart.
+// estimatorKind says which keys a kind takes. A number that may be left out is
+// then 0, or NaN where the kind tells the two apart.
 type estimatorKind struct {
 	kind      string
+	branches  bool // whether it follows RC branches
 	needs     []string
 	takes     []string
 	tellsNone bool
-	branches  bool
 }
 
 // estimatorKinds is the table to extend with a new kind.
 func estimatorKinds() []estimatorKind {
 	return []estimatorKind{
-		{kind: "ekf", needs: []string{"start.soc_std", "measurement.voltage_std_v"}, branches: true,
+		{kind: "ekf", branches: true, needs: []string{"start.soc_std", "measurement.voltage_std_v"},
 			takes: []string{"start.branch_std_v", "process.soc_std_per_sqrt_s", "process.branch_std_v_per_sqrt_s", "measurement.current_std_a"}},
 		{kind: "coulomb", takes: []string{"start.soc_std", "measurement.current_std_a"}, tellsNone: true},
 		{kind: "rest-ocv", needs: []string{"rest.current_below_a", "rest.after_s"},
@@ -56,6 +67,15 @@ func EstimatorKinds() []string {
 	return out
 }
 
+func kindOf(name string) (estimatorKind, bool) {
+	for _, k := range estimatorKinds() {
+		if k.kind == name {
+			return k, true
+		}
+	}
+	return estimatorKind{}, false
+}
+
 // Estimator reads an estimator. Its own cell, if it names one, is read through
 // o.
 func Estimator(file string, text []byte, o Openers) (*estimator.Spec, error) {
@@ -64,85 +84,83 @@ func Estimator(file string, text []byte, o Openers) (*estimator.Spec, error) {
 		return nil, err
 	}
 	s := &estimator.Spec{Name: nameOf(t, file), Branches: -1}
-	if !t.has("kind") {
-		t.missing("kind", "one of "+quoted(EstimatorKinds()))
-	}
 	s.Kind = t.word("kind", EstimatorKinds()...)
-	at := slices.IndexFunc(estimatorKinds(), func(k estimatorKind) bool { return k.kind == s.Kind })
-	if at >= 0 {
-		k := estimatorKinds()[at]
-		if k.branches && t.has("branches") {
-			if s.Branches = t.whole("branches", -1); s.Branches < 0 {
-				t.fail("branches", describe(t.m["branches"]), "a whole number from 0 to the cell's")
-			}
-		} else if k.branches {
-			t.get("branches")
-		}
-		readEstimatorKeys(t, s, k)
+	s.CellFile = t.text("cell")
+	if s.CellFile != "" {
+		ownCell(t, s, o)
+	} else if t.has("cell") {
+		t.failOnce("cell", `""`, "a path beside this file, or no cell: then it is the scenario's fresh one")
 	}
-	s.CellFile = t.text("cell", false)
-	if s.CellFile != "" && o.Cell != nil {
-		text, err := o.Cell(s.CellFile)
-		if err == nil {
-			s.Cell, err = Cell(s.CellFile, text)
+	k, known := kindOf(s.Kind)
+	if !known { // no other key can be judged
+		if !t.has("kind") {
+			t.fail("kind", "nothing", "one of "+quoted(EstimatorKinds()))
 		}
-		if err != nil {
-			t.fail("cell", err.Error(), "a readable cell file")
-		}
+		return nil, d.err()
 	}
-	if at >= 0 {
-		t.finish()
+	if k.branches {
+		s.Branches = t.whole("branches", -1, 0)
 	}
+	estimatorNumbers(t, s, k)
 	if s.Cell != nil && s.Branches > len(s.Cell.Branches) {
-		t.fail("branches", describe(int64(s.Branches)), "at most what the cell has")
+		t.fail("branches", fmt.Sprint(s.Branches), fmt.Sprintf("0 to %d, the branches of its cell", len(s.Cell.Branches)))
 	}
+	t.finish()
 	if err := d.err(); err != nil {
 		return nil, err
 	}
 	return s, nil
 }
 
-func readEstimatorKeys(t *table, s *estimator.Spec, kind estimatorKind) {
-	sections := map[string]*table{}
+// ownCell reads the cell that an estimator is built on.
+func ownCell(t *table, s *estimator.Spec, o Openers) {
+	if o.Cell == nil {
+		t.fail("cell", fmt.Sprintf("%q", s.CellFile), "no cell of its own: no file can be read from here")
+		return
+	}
+	text, err := o.Cell(s.CellFile)
+	if err == nil {
+		s.Cell, err = Cell(s.CellFile, text)
+	}
+	if err != nil {
+		t.blame("cell", err)
+	}
+}
+
+func estimatorNumbers(t *table, s *estimator.Spec, kind estimatorKind) {
+	var sections []*table
 	for _, k := range estimatorKeys() {
-		name := k.section + "." + k.key
-		needed, taken := slices.Contains(kind.needs, name), slices.Contains(kind.takes, name)
-		to := k.to(s)
-		if kind.tellsNone && taken {
+		needed := slices.Contains(kind.needs, k.path())
+		if !needed && !slices.Contains(kind.takes, k.path()) {
+			continue
+		}
+		at := slices.IndexFunc(sections, func(x *table) bool { return x.path == k.section })
+		if at < 0 {
+			at, sections = len(sections), append(sections, estimatorSection(t, k.section))
+		}
+		to, sec := k.to(s), sections[at]
+		if kind.tellsNone {
 			*to = math.NaN()
 		}
-		if !needed && !taken {
-			continue
-		}
-		sec, ok := sections[k.section]
-		if !ok {
-			sec = t.table(k.section)
-			sections[k.section] = sec
-		}
-		allowed := "a finite number ≥ 0"
-		if needed && k.key != "soc_std" {
-			allowed = "a finite number > 0"
-		}
-		switch {
-		case sec == nil && needed:
-			if !t.has(k.section) {
-				t.missing(k.section, "a table with "+k.key)
-			}
-			continue
-		case sec == nil:
-			continue
-		case needed:
-			*to = sec.needNumber(k.key, allowed)
-		default:
+		if needed {
+			*to = sec.needNumber(k.key, k.allowed())
+		} else {
 			*to = sec.number(k.key, *to)
 		}
-		if *to < 0 || *to == 0 && allowed == "a finite number > 0" && sec.has(k.key) {
-			sec.fail(k.key, describe(*to), allowed)
+		if sec.has(k.key) && (*to < 0 || *to == 0 && k.positive) {
+			sec.failOnce(k.key, number(*to), k.allowed())
 		}
 	}
 	for _, sec := range sections {
-		if sec != nil {
-			sec.finish()
-		}
+		sec.finish()
 	}
+}
+
+// estimatorSection returns the table at key; one that is absent is empty, so
+// that what is missing in it is told by its key.
+func estimatorSection(t *table, key string) *table {
+	if sec := t.table(key); sec != nil {
+		return sec
+	}
+	return newTable(t.doc, key, nil)
 }

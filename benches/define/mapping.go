@@ -2,7 +2,9 @@ package define
 
 import (
 	"fmt"
-	"slices"
+	"math"
+	"strings"
+	"unicode"
 	"unicode/utf8"
 
 	"soctrial/plant/record"
@@ -27,28 +29,39 @@ func Map(file string, text []byte) (*record.Map, error) {
 	if err != nil {
 		return nil, err
 	}
-	t.text("name", false)
-	m := &record.Map{SkipRows: t.whole("skip_rows", 0), Delimiter: t.text("delimiter", false), Decimal: t.word("decimal", ".", ",")}
-	if m.SkipRows < 0 {
-		t.fail("skip_rows", fmt.Sprint(m.SkipRows), "a whole number ≥ 0")
-	}
-	if m.Delimiter != "" && utf8.RuneCountInString(m.Delimiter) != 1 {
-		t.fail("delimiter", fmt.Sprintf("%q", m.Delimiter), `one character, e.g. ";" or "\t"`)
-	}
+	nameOf(t, file)
+	m := &record.Map{SkipRows: t.whole("skip_rows", 0, 0), Delimiter: t.text("delimiter"), Decimal: t.word("decimal", ".", ",")}
+	checkDelimiter(t, m)
+	given := false
 	for _, c := range mapColumns(m) {
 		if v := t.table(c.key); v != nil {
 			*c.to = mapColumn(v, c.key)
 			v.finish()
 		}
+		given = given || t.has(c.key)
 	}
-	if !m.Time.Given() && !m.Current.Given() && !m.Voltage.Given() && len(d.errs) == 0 {
-		t.missing("time", "at least one of time, current and voltage")
+	if !given {
+		t.missing("time", "at least one column: time, current, voltage, temperature, soc or charge")
 	}
 	t.finish()
 	if err := d.err(); err != nil {
 		return nil, err
 	}
 	return m, nil
+}
+
+func checkDelimiter(t *table, m *record.Map) {
+	const allowed = `one character that parts values, e.g. ";" or "\t"`
+	r, size := utf8.DecodeRuneInString(m.Delimiter)
+	switch {
+	case m.Delimiter == "" && t.has("delimiter"), size != len(m.Delimiter):
+		t.failOnce("delimiter", fmt.Sprintf("%q", m.Delimiter), allowed)
+	case m.Delimiter == "":
+	case unicode.IsLetter(r), unicode.IsDigit(r), strings.ContainsRune("\"\r\n+-", r):
+		t.fail("delimiter", fmt.Sprintf("%q", m.Delimiter), allowed)
+	case m.Delimiter == m.Decimal, r == '.' && m.Decimal == "":
+		t.fail("delimiter", fmt.Sprintf("%q", m.Delimiter), "another character than the decimal mark")
+	}
 }
 
 type mapEntry struct {
@@ -62,28 +75,28 @@ func mapColumns(m *record.Map) []mapEntry {
 }
 
 func mapColumn(t *table, key string) record.Column {
+	const allowed = "a heading in quotes or a position from 1"
 	var c record.Column
 	v, ok := t.get("column")
-	switch v := v.(type) {
+	switch x := v.(type) {
 	case string:
-		c.Heading = v
+		c.Heading = x
 	case int64:
-		c.Position = int(v)
+		if x >= 1 && x <= math.MaxInt32 {
+			c.Position = int(x)
+		}
 	}
-	if !ok {
-		t.missing("column", "a heading in quotes or a position from 1")
-	} else if c.Heading == "" && c.Position < 1 {
-		t.fail("column", describe(v), "a heading in quotes or a position from 1")
+	switch {
+	case !ok:
+		t.missing("column", allowed)
+	case !c.Given():
+		t.fail("column", describe(v), allowed)
 	}
-	units := mapUnits()[key]
-	c.Unit = t.text("unit", false)
-	if c.Unit != "" && !slices.Contains(units, c.Unit) {
-		t.fail("unit", fmt.Sprintf("%q", c.Unit), "one of "+quoted(units))
-	}
+	c.Unit = t.word("unit", mapUnits()[key]...)
 	if key == "current" || key == "charge" {
-		if b, ok := t.get("charge_positive"); ok {
-			if c.ChargePositive, ok = b.(bool); !ok {
-				t.fail("charge_positive", describe(b), "true or false")
+		if v, ok := t.get("charge_positive"); ok {
+			if c.ChargePositive, ok = v.(bool); !ok {
+				t.fail("charge_positive", describe(v), "true or false")
 			}
 		}
 	}

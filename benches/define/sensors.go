@@ -59,5 +59,5 @@ func readChannel(t *table, unit string, c *noise.Channel) {
 	for _, n := range channelNumbers(unit, c) {
 		*n.to = t.number(n.key, 0)
 	}
-	c.Every = positiveWhole(t, "every")
+	c.Every = t.whole("every", 0, 1)
 }
