@@ -143,7 +143,7 @@ and whether they knew.
 
 // commands lists the commands in the order of the job.
 func commands(s streams) []*cobra.Command {
-	return []*cobra.Command{drawCommand(s), runCommand(s), replayCommand(s), showCommand(s)}
+	return []*cobra.Command{demoCommand(s), drawCommand(s), runCommand(s), replayCommand(s), showCommand(s)}
 }
 
 // version is what the Go tool stamped into the binary.
