@@ -11,8 +11,9 @@
 // default; what would have to be guessed (a missing identity, an unknown
 // number, nesting, a truth value where a number belongs, a hash that does not
 // match) is refused with the file, the column or row, what was found and what
-// is allowed. A damaged file is an error, never a panic, and never asks for
-// memory beyond what its own size and row count justify.
+// is allowed. So are columns packed by LZ4, which the Parquet library gives
+// back wrong. A damaged file is an error, never a panic, and lengths it states
+// are held against its size and row count before memory is made for them.
 //
 // The package reads no TOML: benches/define makes values of the texts.
 package store
