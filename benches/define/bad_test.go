@@ -314,7 +314,7 @@ func TestBadInput(t *testing.T) {
 		{"plan", "values = [1.0, 0.9, 0.8]", "values = [1.0, 0.9, \"low\"]",
 			`f.toml:9:114: vary[1].values[2]: found "low", allowed is a number`},
 		{"plan", "values = [1.0, 0.9, 0.8]", "values = [1.0, 0.9, -0.8]",
-			`f.toml:9:114: vary[1].values[2]: found capacity_scale = -0.8, allowed is a number > 0`},
+			`f.toml:9:114: vary[1].values[2]: found -0.8, allowed is a number > 0, which column capacity_scale holds`},
 		{"plan", "at_most = 0.05", "at_most = -0.05",
 			`f.toml:11:40: limit[0].at_most: found -0.05, allowed is a finite number ≥ 0: a metric's size is judged`},
 		{"plan", "share = 0.95", "share = 95",

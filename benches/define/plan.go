@@ -164,7 +164,7 @@ func inColumn(t *table, v *scenario.Vary) {
 	}
 	check := func(key string, x scenario.Value) {
 		if _, err := column.Fit(x); err != nil {
-			t.failOnce(key, v.Column+" = "+x.String(), column.Allowed())
+			t.failOnce(key, x.String(), column.Allowed()+", which column "+v.Column+" holds")
 		}
 	}
 	for i, x := range v.Texts {
