@@ -45,7 +45,6 @@ type seat struct {
 	lost     string
 	used     int // samples of the present block that were estimated
 	cost     Cost
-	setup    estimator.Setup
 	unusable bool // gave up or panicked: to be built anew
 }
 

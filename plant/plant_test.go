@@ -150,8 +150,7 @@ func truthR0(t *testing.T, c *cell.Cell) float64 {
 // trace times that fall between samples.
 func TestChargeIsConserved(t *testing.T) {
 	rapid.Check(t, func(t *rapid.T) {
-		var l duty.Leg
-		l = leg(duty.Trace, nan)
+		l := leg(duty.Trace, nan)
 		at, charge := 0.0, 0.0
 		for range rapid.IntRange(1, 30).Draw(t, "steps") {
 			i := rapid.Float64Range(-3, 5).Draw(t, "current")

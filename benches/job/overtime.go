@@ -24,23 +24,23 @@ type OverTimeOptions struct {
 	Report         Reporter
 }
 
-// OverTime is how the size of one estimator's error goes over time on one
-// cell: percentiles over the scenarios that still run, fractions of SOC. A lost
-// estimator is infinitely wrong from there on.
+// OverTime is how the size of one estimator's error goes over time on one cell
+// under one duty: percentiles over the scenarios that still run, fractions of
+// SOC. A lost estimator is infinitely wrong from there on.
 type OverTime struct {
-	Cell, Estimator        string
-	Scenarios              int // of the cell
+	Cell, Duty, Estimator  string
+	Scenarios              int // of this cell and duty
 	TimeS                  []float64
 	P50, P90, P95, Largest []float64
 }
 
-// fewestRunning is the least share of a cell's scenarios that must still run
+// fewestRunning is the least share of the scenarios that must still run
 // for percentiles to be told: those that last longest are not like the rest.
 const fewestRunning = 0.5
 
 // ErrorsOverTime runs every scenario of a set again and says how the errors
-// spread over scenarios at each time: for each cell, in the order of the set,
-// each estimator as given.
+// spread over scenarios at each time: for each cell and duty, in the order of
+// the set, each estimator as given.
 func ErrorsOverTime(ctx context.Context, o OverTimeOptions) ([]OverTime, error) {
 	if !(o.EveryS > 0) {
 		return nil, wrongf("errors over time: found every %g s, allowed is > 0", o.EveryS)
@@ -54,12 +54,12 @@ func ErrorsOverTime(ctx context.Context, o OverTimeOptions) ([]OverTime, error) 
 		return nil, err
 	}
 	var out []OverTime
-	for _, cell := range cellsInOrder(in.set) {
+	for _, kind := range kindsOf(in.set) {
 		for e := range in.specs {
-			t := OverTime{Cell: cell, Estimator: in.specs[e].Name}
+			t := OverTime{Cell: kind[0], Duty: kind[1], Estimator: in.specs[e].Name}
 			var mine [][]float64
 			for i := range in.set.Rows {
-				if in.set.Rows[i].Cell == cell {
+				if r := &in.set.Rows[i]; r.Cell == t.Cell && r.Duty == t.Duty {
 					mine = append(mine, errs[i][e])
 				}
 			}
@@ -161,11 +161,12 @@ func (t *OverTime) fold(errs [][]float64, everyS float64) {
 	}
 }
 
-func cellsInOrder(s *scenario.Set) []string {
-	var out []string
+// kindsOf lists the pairs of cell and duty in a set, in its order.
+func kindsOf(s *scenario.Set) [][2]string {
+	var out [][2]string
 	for i := range s.Rows {
-		if !slices.Contains(out, s.Rows[i].Cell) {
-			out = append(out, s.Rows[i].Cell)
+		if kind := [2]string{s.Rows[i].Cell, s.Rows[i].Duty}; !slices.Contains(out, kind) {
+			out = append(out, kind)
 		}
 	}
 	return out

@@ -90,7 +90,7 @@ func Replay(ctx context.Context, o ReplayOptions) (*Outcome, error) {
 	}
 	out := &Outcome{Dir: filepath.Clean(o.OutDir), Name: j.Name, Set: in.set, Results: results, Costs: map[string]benches.Cost{},
 		Complete: true, Finished: 1, Total: 1, Reference: in.reference.said, Elapsed: time.Since(began)}
-	t := Timing{Format: timingFormat, Version: o.Version, Workers: 1, Sessions: 1, StartedAt: began.UTC().Format(timeFormat),
+	t := Timing{Format: timingFormat, Version: o.Version, Workers: 1, Runs: 1, StartedAt: began.UTC().Format(timeFormat),
 		ElapsedS: out.Elapsed.Seconds(), Scenarios: 1}
 	for i, s := range j.Estimators {
 		out.Costs[s.Name] = costs[i]

@@ -21,9 +21,9 @@ type Timing struct {
 	Format     string          `json:"format"` // soctrial/timing/1
 	Version    string          `json:"version"`
 	Workers    int             `json:"workers"`
-	Sessions   int             `json:"sessions"` // 1 and one more for each time it was continued
+	Runs       int             `json:"runs"` // 1 and one more for each time it was continued
 	StartedAt  string          `json:"started_at"`
-	ElapsedS   float64         `json:"elapsed_s"` // of all sessions that came to an end of their own
+	ElapsedS   float64         `json:"elapsed_s"` // of all runs that came to an end of their own
 	Scenarios  int             `json:"scenarios"` // timed in them
 	Estimators []EstimatorCost `json:"estimators"`
 }
@@ -74,7 +74,7 @@ func costOf(name string, c benches.Cost) EstimatorCost {
 	return e
 }
 
-// writeTiming adds this session's figures to those of the ones before it.
+// writeTiming adds this run's figures to those of the ones before it.
 func (r *running) writeTiming() error {
 	path := r.ledger.folder.path(TimingFile)
 	t := &Timing{}
@@ -83,7 +83,7 @@ func (r *running) writeTiming() error {
 			t = before
 		}
 	}
-	sessions := max(t.Sessions, min(r.found, 1)) + 1
+	sessions := max(t.Runs, min(r.found, 1)) + 1
 	for i, s := range r.in.specs {
 		for _, e := range t.Estimators {
 			if e.Name == s.Name {
@@ -92,7 +92,7 @@ func (r *running) writeTiming() error {
 			}
 		}
 	}
-	now := Timing{Format: timingFormat, Version: r.o.Version, Workers: r.o.workers(), Sessions: sessions,
+	now := Timing{Format: timingFormat, Version: r.o.Version, Workers: r.o.workers(), Runs: sessions,
 		StartedAt: r.began.UTC().Format(timeFormat), ElapsedS: t.ElapsedS + time.Since(r.began).Seconds(),
 		Scenarios: t.Scenarios + len(r.ledger.rows) - r.found}
 	for i, s := range r.in.specs {
