@@ -138,7 +138,7 @@ func showTiming(o *ShowOptions) (*Shown, error) {
 	}
 	s := &Shown{Kind: "timing", Name: recordName(o.Path)}
 	s.fact("scenarios", "%d", t.Scenarios)
-	s.fact("time", "%.3g s on %d workers, in %d sessions", t.ElapsedS, t.Workers, t.Runs)
+	s.fact("time", "%.3g s on %d workers, in %d runs", t.ElapsedS, t.Workers, t.Runs)
 	rows := [][]string{{"estimator", "samples", "s", "ns/sample"}}
 	for _, e := range t.Estimators {
 		ns := "-"

@@ -79,11 +79,11 @@ func (r *running) writeTiming() error {
 	path := r.ledger.folder.path(TimingFile)
 	t := &Timing{}
 	if r.found > 0 {
-		if before, err := ReadTiming(path); err == nil { // a killed session left none
+		if before, err := ReadTiming(path); err == nil { // a killed run left none
 			t = before
 		}
 	}
-	sessions := max(t.Runs, min(r.found, 1)) + 1
+	runs := max(t.Runs, min(r.found, 1)) + 1
 	for i, s := range r.in.specs {
 		for _, e := range t.Estimators {
 			if e.Name == s.Name {
@@ -92,7 +92,7 @@ func (r *running) writeTiming() error {
 			}
 		}
 	}
-	now := Timing{Format: timingFormat, Version: r.o.Version, Workers: r.o.workers(), Runs: sessions,
+	now := Timing{Format: timingFormat, Version: r.o.Version, Workers: r.o.workers(), Runs: runs,
 		StartedAt: r.began.UTC().Format(timeFormat), ElapsedS: t.ElapsedS + time.Since(r.began).Seconds(),
 		Scenarios: t.Scenarios + len(r.ledger.rows) - r.found}
 	for i, s := range r.in.specs {
