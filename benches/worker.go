@@ -71,7 +71,10 @@ func (w *worker) run(ctx context.Context, at int, sink func(Block) error) (f Fin
 		return f, false
 	}
 	row := &w.job.Set.Rows[at]
-	outcome := w.plant.Outcome()
+	var outcome plant.Outcome
+	if reason == "" {
+		outcome = w.plant.Outcome()
+	}
 	f.Notices = outcome.Notices
 	for i := range w.seats {
 		s := &w.seats[i]
