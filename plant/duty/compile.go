@@ -23,10 +23,13 @@ type node struct {
 	stepS    float64 // at[k] is k·stepS to the bit; 0: uneven
 	passS    float64 // a leaf's length, a group's cap; +Inf: none
 
-	// exact says that it always lasts totalS; then children begin at offset
-	// from its pass's start.
-	exact  bool
-	totalS float64 // all passes
+	// regular says that nothing but a stop of its own or around it makes it
+	// last other than totalS; exact, that it has none of its own.
+	regular, exact bool
+	ownStops       bool
+	totalS         float64 // all passes
+	// offset is when each child begins, counted from the last irregular one
+	// before it.
 	offset []float64
 }
 
@@ -55,7 +58,8 @@ func (b *builder) node(l *Leg, depth, topLeg int, outer []Stop, atLimit AtLimit)
 	if l.AtLimit != "" {
 		n.atLimit = l.AtLimit
 	}
-	n.stops = append(outer[:len(outer):len(outer)], b.stopsOf(l, depth, topLeg)...)
+	own := b.stopsOf(l, depth, topLeg)
+	n.stops, n.ownStops = append(outer[:len(outer):len(outer)], own...), len(own) > 0
 	if given(l.DurationS) {
 		n.passS = l.DurationS
 	}
@@ -87,20 +91,23 @@ func evenStepS(at []float64) float64 {
 // measure works out how long the node lasts, where that is known.
 func (n *node) measure() {
 	pass := n.passS
-	n.exact = true
+	n.regular = true
 	if n.kind == Group {
-		var sum float64
+		var sum, since float64
 		for i := range n.children {
 			c := &n.children[i]
-			n.offset = append(n.offset, sum)
+			n.offset = append(n.offset, since)
 			sum += c.totalS
-			n.exact = n.exact && c.exact
+			since += c.totalS
+			if !c.regular { // what follows counts from its real end
+				since = 0
+			}
+			n.regular = n.regular && c.exact
 		}
 		pass = min(pass, sum)
 	}
-	if len(n.stops) > 0 || math.IsInf(pass, 1) {
-		n.exact = false
-	}
+	n.regular = n.regular && !math.IsInf(pass, 1)
+	n.exact = n.regular && !n.ownStops
 	n.totalS = pass * float64(n.repeat)
 }
 

@@ -127,11 +127,11 @@ func (c *Cursor) passOver(i int, endS float64) {
 	f := &c.frames[i]
 	f.pass++
 	if f.pass >= f.n.repeat {
-		c.over(i, endS, f.n.exact)
+		c.over(i, endS, f.n.regular)
 		return
 	}
 	start := endS
-	if f.n.exact || f.n.kind != Group {
+	if f.n.regular {
 		// from the leg's start, so that many passes do not drift
 		start = f.startS + float64(f.pass)*(f.n.totalS/float64(f.n.repeat))
 	}
@@ -166,8 +166,8 @@ func (c *Cursor) enter(i int, n *node, startS float64) {
 	c.begin(i, startS)
 }
 
-// over ends the leg in frame i; exact says that it took the time it had.
-func (c *Cursor) over(i int, endS float64, exact bool) {
+// over ends the leg in frame i; full says that it took all its totalS.
+func (c *Cursor) over(i int, endS float64, full bool) {
 	if i == 0 {
 		c.top, c.stops = -1, nil
 		c.demand = Demand{EndS: math.Inf(1)}
@@ -180,7 +180,7 @@ func (c *Cursor) over(i int, endS float64, exact bool) {
 		return
 	}
 	start := endS
-	if exact {
+	if full {
 		start = p.anchorS + (p.n.offset[p.child] - p.n.offset[p.anchorChild])
 	} else {
 		p.anchorS, p.anchorChild = endS, p.child
