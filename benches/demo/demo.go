@@ -71,7 +71,7 @@ func Steps() []Step {
 				{367, "the filter's worst on the flat cell", "track-flat-worst"},
 			},
 			Limit:     [2]string{"settled_max_abs", "ekf"},
-			MeantFail: "its limits on settled_max_abs show what a filter can and cannot do on a flat open-circuit voltage",
+			MeantFail: "on a flat open-circuit voltage a few millivolts are many percent of charge",
 		},
 		{
 			Name: "published", Plan: "published.toml", Estimators: estimators,
@@ -79,7 +79,7 @@ func Steps() []Step {
 			Pictured:  []string{"published-850.toml", "stress-test.toml", "driving-cycle.toml"},
 			Tracks:    []Track{{15, "the filter's worst under the stress test", "track-published-dst"}, {36, "the filter's worst on the driving cycle", "track-published-nedc"}},
 			Limit:     [2]string{"settled_max_abs", "ekf"},
-			MeantFail: "counting keeps the error it starts with",
+			MeantFail: "who only counts keeps the error it starts with",
 		},
 	}
 }

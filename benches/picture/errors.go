@@ -66,7 +66,7 @@ func ErrorsOverTime(w io.Writer, format Format, c ErrorColumns) error {
 			under = col
 		}
 		if !math.IsNaN(c.Limit) {
-			p.levels = []level{{at: 100 * c.Limit, style: limitLine()}}
+			p.levels = []level{{100 * c.Limit, limitLine()}}
 		}
 		f.place(p, 3)
 	}
@@ -141,12 +141,13 @@ func WorstErrors(w io.Writer, format Format, c DistributionColumns) error {
 		f.legend = append(f.legend, entry{name: e.Name, line: st})
 	}
 	if !math.IsNaN(c.AtMost) {
+		p.walls = []level{{c.AtMost, limitLine()}}
 		word := fmt.Sprintf("limit: %.4g %s", c.AtMost, c.Unit)
-		p.walls = []level{{at: c.AtMost, style: limitLine(), word: word}}
 		if c.Share > 0 {
-			p.levels = []level{{at: 100 * c.Share, style: limitLine()}}
-			f.legend = append(f.legend, entry{name: fmt.Sprintf("limit: %.4g %% of scenarios at or below %.4g %s", 100*c.Share, c.AtMost, c.Unit), line: limitLine()})
+			p.levels = []level{{100 * c.Share, limitLine()}}
+			word = fmt.Sprintf("limit: %.4g %% of scenarios at or below %.4g %s", 100*c.Share, c.AtMost, c.Unit)
 		}
+		f.legend = append(f.legend, entry{name: word, line: limitLine()})
 	}
 	f.rows = []row{{[]*panel{p}, 1}}
 	return f.render(w, format)

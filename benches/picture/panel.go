@@ -33,11 +33,10 @@ type band struct {
 	fill      color.Color
 }
 
-// level is a straight line at one value, with a word beside it.
+// level is a straight line at one value; the legend names it.
 type level struct {
 	at    float64
 	style draw.LineStyle
-	word  string
 }
 
 // fit sets the axes to hold everything.
@@ -137,7 +136,7 @@ func (p *panel) draw(c draw.Canvas, l lettering, nameX, nameY bool, left vg.Leng
 			}
 		}
 	}
-	p.drawLevels(c, l)
+	p.drawLevels(c)
 	c.StrokeLines(frame, []vg.Point{c.Min, {X: c.Max.X, Y: c.Min.Y}, c.Max, {X: c.Min.X, Y: c.Max.Y}, c.Min})
 }
 
@@ -191,41 +190,18 @@ func (p *panel) drawGrid(c draw.Canvas, l lettering, nameX, nameY bool, left vg.
 	}
 }
 
-// drawLevels draws straight lines, each with its word on white ground beside
-// it, inside the frame.
-func (p *panel) drawLevels(c draw.Canvas, l lettering) {
-	word := func(text string, st text.Style, at vg.Point) {
-		box := st.Rectangle(text).Add(at)
-		c.FillPolygon(faint(color.White, 0xdd), []vg.Point{box.Min, {X: box.Max.X, Y: box.Min.Y}, box.Max, {X: box.Min.X, Y: box.Max.Y}})
-		c.FillText(st, at, text)
-	}
+// drawLevels draws straight lines across the panel.
+func (p *panel) drawLevels(c draw.Canvas) {
 	for _, v := range p.levels {
-		if !p.y.drawable(v.at) {
-			continue
-		}
-		y := c.Y(p.y.share(v.at))
-		c.StrokeLine2(v.style, c.Min.X, y, c.Max.X, y)
-		if v.word != "" {
-			st := l.style(tickSize, text.XRight, text.YBottom)
-			st.Color = v.style.Color
-			word(clean(v.word), st, vg.Point{X: c.Max.X - 4*pt, Y: y + 2*pt})
+		if p.y.drawable(v.at) {
+			y := c.Y(p.y.share(v.at))
+			c.StrokeLine2(v.style, c.Min.X, y, c.Max.X, y)
 		}
 	}
 	for _, v := range p.walls {
-		if !p.x.drawable(v.at) {
-			continue
-		}
-		s := p.x.share(v.at)
-		x := c.X(s)
-		c.StrokeLine2(v.style, x, c.Min.Y, x, c.Max.Y)
-		if v.word != "" {
-			st := l.style(tickSize, text.XLeft, text.YBottom)
-			to := x + 4*pt
-			if s > 0.7 {
-				st.XAlign, to = text.XRight, x-4*pt
-			}
-			st.Color = v.style.Color
-			word(clean(v.word), st, vg.Point{X: to, Y: c.Min.Y + 5*pt})
+		if p.x.drawable(v.at) {
+			x := c.X(p.x.share(v.at))
+			c.StrokeLine2(v.style, x, c.Min.Y, x, c.Max.Y)
 		}
 	}
 }

@@ -94,8 +94,8 @@ func (p *panel) add(l line, b *band) {
 	}
 }
 
-// clip lets bands wider than three times what the lines need run out of the
-// panel, so that the lines stay readable.
+// clip cuts bands at three times the height the lines need, so that the lines
+// stay readable.
 func (p *panel) clip() {
 	e := noExtent()
 	for _, l := range p.lines {
@@ -117,13 +117,14 @@ func (p *panel) clip() {
 func residual(x axis, time []float64, e Estimate, st draw.LineStyle) *panel {
 	p := &panel{name: "", x: x, y: axis{name: "Residual", unit: "mV"}, zero: true}
 	y := scaled(e.InnovationV, 1000)
-	p.name = fmt.Sprintf("Voltage residual of %s: reading minus prediction", e.Name)
+	p.name = fmt.Sprintf("Voltage residual of %s, reading minus prediction", e.Name)
 	if b := around(scaled(e.InnovationV, 0), e.InnovationStdV, 2000); b != nil {
-		p.name += ", within its stated ±2σ"
+		p.name += "; shaded: its stated ±2σ, as far as shown"
 		b.x, b.fill = time, faint(st.Color, 0x38)
 		p.bands = append(p.bands, *b)
 	}
 	p.lines = []line{{x: time, y: y, style: draw.LineStyle{Color: st.Color, Width: 0.9 * pt}}}
+	p.clip()
 	return p
 }
 

@@ -60,6 +60,7 @@ type demoRun struct {
 
 	work     string // where it is built; becomes dir at the end
 	files    []madeFile
+	pictured []madeFile
 	commands []string
 }
 
@@ -206,7 +207,7 @@ func (d *demoRun) remark(step demo.Step, out *job.Outcome) {
 	if failed == 1 {
 		verb = "limit does"
 	}
-	d.say(fmt.Sprintf("%d %s not hold, which the demo means to show: %s. In a run of yours the exit status would be 1.", failed, verb, step.MeantFail))
+	d.say(fmt.Sprintf("%d %s not hold, and this demo means to show it: %s. In a run of yours the exit status would be 1.", failed, verb, step.MeantFail))
 	fmt.Fprintln(d.out)
 }
 
@@ -239,9 +240,14 @@ func (d *demoRun) finish() error {
 
 // tell says where everything lies and how to go on.
 func (d *demoRun) tell(took time.Duration) {
-	fmt.Fprintf(d.out, "%s\n\nWritten to %s in %.1f s\n", strings.Repeat("━", lineWidth), d.dir, took.Seconds())
+	fmt.Fprintf(d.out, "%s\n\nWritten to %s in %.1f s\n\n", strings.Repeat("━", lineWidth), d.dir, took.Seconds())
 	rows := [][]string{{"file", "what it holds"}, {demoDefinitions + "/", "every definition, to be changed"}}
 	for _, f := range d.files {
+		rows = append(rows, []string{f.name, f.what})
+	}
+	fmt.Fprintln(d.out, grid(rows, 1))
+	rows = [][]string{{demoPictures + "/*.png and *.svg", "what it shows"}}
+	for _, f := range d.pictured {
 		rows = append(rows, []string{f.name, f.what})
 	}
 	fmt.Fprint(d.out, grid(rows, 1))

@@ -43,12 +43,8 @@ func (d *demoRun) draw(name, what string, draw func(io.Writer, picture.Format) e
 			return err
 		}
 	}
-	d.madePicture(name, what)
+	d.pictured = append(d.pictured, madeFile{name, what})
 	return nil
-}
-
-func (d *demoRun) madePicture(name, what string) {
-	d.made(filepath.Join(demoPictures, name)+".png, .svg", what)
 }
 
 func (d *demoRun) drawDefinitions(step demo.Step) error {
@@ -63,7 +59,7 @@ func (d *demoRun) drawDefinitions(step demo.Step) error {
 			}
 			kind = shown.Kind
 		}
-		d.madePicture(name, "the "+kind)
+		d.pictured = append(d.pictured, madeFile{name, "the " + kind})
 	}
 	return nil
 }
@@ -99,8 +95,8 @@ func (d *demoRun) drawTrack(step demo.Step, t demo.Track, out *job.Outcome) erro
 func conditions(out *job.Outcome, id int64) string {
 	for i := range out.Set.Rows {
 		if r := &out.Set.Rows[i]; r.ID == id {
-			return fmt.Sprintf(": %.0f °C, capacity × %.2f, R0 × %.2f, told SOC %+.0f %% at the start", r.AmbientC, r.CapacityScale, r.R0Scale,
-				100*r.SOCStartError)
+			return fmt.Sprintf(": %.0f °C, capacity × %.2f, R0 × %.2f, told %+.0f %% SOC at the start", r.AmbientC, r.CapacityScale, r.R0Scale,
+				math.Round(100*r.SOCStartError)+0)
 		}
 	}
 	return ""
@@ -137,7 +133,7 @@ func (d *demoRun) drawWorst(step demo.Step, cell string, out *job.Outcome) error
 		cols.Estimators[k].Values = append(cols.Estimators[k].Values, x)
 	}
 	cols.Note = fmt.Sprintf("%d scenarios, the same for each estimator", len(cols.Estimators[0].Values))
-	return d.draw("worst-"+cell, "which share of scenarios stays below which error",
+	return d.draw("worst-"+cell, "worst errors: share of scenarios below each",
 		func(w io.Writer, f picture.Format) error { return picture.WorstErrors(w, f, cols) })
 }
 
@@ -157,16 +153,15 @@ func (d *demoRun) drawOverTime(ctx context.Context, step demo.Step, out *job.Out
 		return ofJob(err)
 	}
 	atMost, _ := limitOf(step, out)
-	for _, cell := range cellsOf(out.Results) {
-		cols := picture.ErrorColumns{Title: "Errors over time: set " + step.Name + ", cell " + cell, Limit: atMost}
-		for _, t := range all {
-			if t.Cell != cell {
-				continue
-			}
-			cols.Note = fmt.Sprintf("percentiles over the scenarios still running, of %d, every %d s; up to where half of them run", t.Scenarios, everyS)
+	for from := 0; from < len(all); {
+		kind := all[from]
+		cols := picture.ErrorColumns{Title: fmt.Sprintf("Errors over time: set %s, cell %s, duty %s", step.Name, kind.Cell, kind.Duty), Limit: atMost,
+			Note: fmt.Sprintf("percentiles over those of %d scenarios that still run, every %d s, up to where half of them do", kind.Scenarios, everyS)}
+		for ; from < len(all) && all[from].Cell == kind.Cell && all[from].Duty == kind.Duty; from++ {
+			t := &all[from]
 			cols.Estimators = append(cols.Estimators, picture.ErrorPercentiles{Name: t.Estimator, TimeS: t.TimeS, P50: t.P50, P90: t.P90, P95: t.P95, Largest: t.Largest})
 		}
-		if err := d.draw("errors-"+cell, "percentiles of |error| over time",
+		if err := d.draw("errors-"+kind.Cell+"-"+kind.Duty, "errors over time: percentiles of scenarios",
 			func(w io.Writer, f picture.Format) error { return picture.ErrorsOverTime(w, f, cols) }); err != nil {
 			return err
 		}
