@@ -8,6 +8,7 @@ import (
 	"io/fs"
 	"os"
 	"path/filepath"
+	"syscall"
 )
 
 // disk is where files are made. through, where set, stands between every write
@@ -113,16 +114,21 @@ func (p *pending) abort() {
 	p.file = nil
 }
 
-// syncFolder makes a rename in the folder last. Not every file system lets a
-// folder be synced; then the rename lasts as long as that system says.
+// syncFolder makes a rename in the folder last.
 func syncFolder(dir string) error {
 	d, err := os.Open(dir)
-	if err != nil {
-		return fmt.Errorf("store: %w", err)
+	if err == nil {
+		err = errors.Join(d.Sync(), d.Close())
 	}
-	defer d.Close()
-	if err := d.Sync(); err != nil && !errors.Is(err, errors.ErrUnsupported) && !errors.Is(err, fs.ErrInvalid) {
+	if err != nil && !cannotSync(err) {
 		return fmt.Errorf("store: syncing folder %s: %w", dir, err)
 	}
 	return nil
+}
+
+// cannotSync tells whether the system, the file system or the rights to the
+// folder (write without read) rule out that a folder is synced. The file stands whole by
+// then, and lasts as long as that system says.
+func cannotSync(err error) bool {
+	return errors.Is(err, errors.ErrUnsupported) || errors.Is(err, syscall.EINVAL) || errors.Is(err, fs.ErrPermission)
 }

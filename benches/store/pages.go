@@ -1,11 +1,9 @@
 package store
 
 import (
-	"encoding/binary"
 	"errors"
 	"io"
 
-	"github.com/klauspost/compress/zstd"
 	"github.com/parquet-go/parquet-go/encoding/thrift"
 	"github.com/parquet-go/parquet-go/format"
 )
@@ -103,38 +101,4 @@ func (t *table) pageHeader(at, end int64) (*format.PageHeader, int64, error) {
 		}
 		return header, int64(n), nil
 	}
-}
-
-// unpacksTo tells whether compressed bytes that state how much they unpack to
-// state no more than their page's header: the library makes room for what they
-// say. The others are let through.
-func (t *table) unpacksTo(codec format.CompressionCodec, h *format.PageHeader, at int64) bool {
-	size, end := int64(h.UncompressedPageSize), at+int64(h.CompressedPageSize)
-	if v2 := &h.DataPageHeaderV2; v2.Valid { // its levels stand before, never compressed
-		levels := int64(v2.V.DefinitionLevelsByteLength) + int64(v2.V.RepetitionLevelsByteLength)
-		at, size = at+levels, size-levels
-		if levels < 0 || size < 0 || at > end {
-			return false
-		}
-		if v2.V.IsCompressed.Valid && !v2.V.IsCompressed.V {
-			return true
-		}
-	}
-	var first [zstd.HeaderMaxSize]byte
-	b := first[:min(int64(len(first)), end-at)]
-	if _, err := t.input.ReadAt(b, at); err != nil {
-		return false
-	}
-	switch codec {
-	case format.Snappy:
-		n, used := binary.Uvarint(b)
-		return used > 0 && n <= uint64(size) || len(b) == 0
-	case format.Zstd:
-		var z zstd.Header
-		if err := z.Decode(b); err != nil {
-			return len(b) == 0
-		}
-		return (!z.HasFCS || z.FrameContentSize <= uint64(size)) && z.WindowSize <= uint64(t.limit.pageBytes)
-	}
-	return true
 }

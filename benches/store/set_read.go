@@ -1,6 +1,7 @@
 package store
 
 import (
+	"errors"
 	"fmt"
 	"math"
 	"strings"
@@ -68,9 +69,6 @@ func readSet(t *table) (*SetFile, error) {
 		if _, ok := t.find(c.Name); c.Required && !ok {
 			return nil, t.errf("column %q is missing; a set has %s (this file has %s)", c.Name, required(), strings.Join(t.names(), ", "))
 		}
-	}
-	if t.rows == 0 {
-		return nil, t.errf("the set has no rows")
 	}
 	// The ids first, so that any other value can be told by its scenario.
 	idField, _ := t.find("scenario_id")
@@ -160,9 +158,12 @@ func isDefinition(key string) bool {
 	return key == "plan"
 }
 
-// checkSet checks what a set must hold, whoever wrote it, beside good values: each id
-// once, every definition that is named, and texts under names that can be kept.
+// checkSet checks what a set must hold, whoever wrote it, beside good values: a row,
+// each id once, every definition that is named, and texts under names that can be kept.
 func checkSet(rows []scenario.Row, texts map[string]string) error {
+	if len(rows) == 0 {
+		return errors.New("the set has no rows")
+	}
 	for _, key := range sortedKeys(texts) {
 		_, name, _ := strings.Cut(key, ".")
 		switch {

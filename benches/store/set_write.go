@@ -89,10 +89,12 @@ func putSet(w io.Writer, rows []scenario.Row, labels []setColumn, meta map[strin
 
 // departs tells whether any row's value is not the column's default.
 func departs(c *scenario.Column, rows []scenario.Row) bool {
-	return slices.ContainsFunc(rows, func(r scenario.Row) bool {
-		v := c.Get(&r)
-		return v.Null != c.Default.Null || !v.Null && v != c.Default
-	})
+	for i := range rows { // by index: a row is big
+		if v := c.Get(&rows[i]); v.Null != c.Default.Null || !v.Null && v != c.Default {
+			return true
+		}
+	}
+	return false
 }
 
 func tableColumn(c scenario.Column) setColumn {

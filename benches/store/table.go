@@ -33,6 +33,7 @@ type table struct {
 	input  io.ReaderAt
 	size   int64
 	limit  bounds
+	unpack unpacker
 	rows   int64
 	fields []field // in the file's order
 	meta   map[string]string
