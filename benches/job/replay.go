@@ -157,7 +157,7 @@ func loadReplay(o *ReplayOptions) (*replayInputs, error) {
 		return nil, wrongf("%s: %w", o.RecordPath, err)
 	}
 	in := &replayInputs{set: set, reference: ref}
-	in.meta = store.ResultsMeta{SetSHA256: hash, Version: o.Version, EstimatorFiles: map[string]string{}, Settings: settingsOf(set)}
+	in.meta = store.ResultsMeta{Version: o.Version, EstimatorFiles: map[string]string{}, Settings: settingsOf(set)}
 	addEstimators(&in.meta, specs, texts)
 	readings := rec.Readings
 	if o.SensorsPath != "" {
@@ -174,7 +174,7 @@ func loadReplay(o *ReplayOptions) (*replayInputs, error) {
 	if err != nil {
 		return nil, wrongf("%s: %w", o.RecordPath, err)
 	}
-	in.meta.Settings["record"] = "replay of a record; its hash stands in place of a set's"
+	in.meta.Settings["record.sha256"] = hash
 	in.meta.Settings["cell"] = define.FormatCell(c)
 	in.meta.Settings["reference"] = ref.said
 	in.meta.Settings["soc_start"] = number(start)
@@ -236,7 +236,7 @@ func (in *replayInputs) traces(f *folder, o *ReplayOptions) (func(benches.Replay
 	if o.Traces == "none" {
 		return nil, func(bool) error { return nil }, nil
 	}
-	w, err := store.NewTraceWriter(f.path(TracesFile), o.ThinTraces, store.TraceMeta{SetSHA256: in.meta.SetSHA256, Version: o.Version})
+	w, err := store.NewTraceWriter(f.path(TracesFile), o.ThinTraces, store.TraceMeta{Version: o.Version})
 	if err != nil {
 		return nil, nil, wrong(err)
 	}
