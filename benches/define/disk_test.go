@@ -186,7 +186,14 @@ func TestAt(t *testing.T) {
 	wantError(t, At("f.toml", []byte(planText), fmt.Errorf("plan: %w", limits)), "",
 		`f.toml:11:12: limit[0].metric: found "settled_max_abs", allowed is a metric (the nearest is settled_max_abs_soc)`)
 	wantError(t, At("f.toml", []byte(planText), errors.New("no key")), "", "f.toml: no key")
+	wantError(t, At("f.toml", []byte(planText), odd{}), "", "f.toml:8:1: count: is odd")
 }
+
+// odd names a key but says neither what was found nor what is allowed.
+type odd struct{}
+
+func (odd) Error() string   { return "count: is odd" }
+func (odd) KeyPath() string { return "count" }
 
 // However TOML lets a table be spelled, it is the same definition and its
 // keys are found where they stand.
@@ -218,6 +225,10 @@ func TestManyErrors(t *testing.T) {
 	var all Errors
 	if !errors.As(err, &all) || len(all) != 25 {
 		t.Fatalf("got %v", err)
+	}
+	var first *Error
+	if !errors.As(err, &first) || first.Key != "z00" || first.Line != 3 || first.Column != 1 {
+		t.Errorf("the first is %+v", first)
 	}
 	lines := strings.Split(err.Error(), "\n")
 	if len(lines) != 11 || !strings.HasPrefix(lines[9], "f.toml:12:1: z09: ") || lines[10] != "and 15 more" {

@@ -127,18 +127,20 @@ func ownCell(t *table, s *estimator.Spec, o Openers) {
 	}
 }
 
+// estimatorNumbers reads the sections of a kind.
 func estimatorNumbers(t *table, s *estimator.Spec, kind estimatorKind) {
-	var sections []*table
+	sections := map[string]*table{}
+	var order []string
 	for _, k := range estimatorKeys() {
 		needed := slices.Contains(kind.needs, k.path())
 		if !needed && !slices.Contains(kind.takes, k.path()) {
 			continue
 		}
-		at := slices.IndexFunc(sections, func(x *table) bool { return x.path == k.section })
-		if at < 0 {
-			at, sections = len(sections), append(sections, estimatorSection(t, k.section))
+		if _, begun := sections[k.section]; !begun {
+			sections[k.section] = estimatorSection(t, k.section)
+			order = append(order, k.section)
 		}
-		to, sec := k.to(s), sections[at]
+		to, sec := k.to(s), sections[k.section]
 		if kind.tellsNone {
 			*to = math.NaN()
 		}
@@ -151,8 +153,10 @@ func estimatorNumbers(t *table, s *estimator.Spec, kind estimatorKind) {
 			sec.failOnce(k.key, number(*to), k.allowed())
 		}
 	}
-	for _, sec := range sections {
-		sec.finish()
+	for _, name := range order {
+		if _, isTable := t.m[name].(map[string]any); isTable || !t.has(name) { // else it is told already
+			sections[name].finish()
+		}
 	}
 }
 

@@ -53,8 +53,15 @@ func locate(text []byte) places {
 	return l.at
 }
 
+// maxPath is how long a path is followed, in bytes; no key of a definition
+// lies so deep, and what does is put down to what is around it.
+const maxPath = 1 << 10
+
 // put notes where path stands; the first place counts.
 func (l *locator) put(path string, r unstable.Range) {
+	if len(path) > maxPath {
+		return
+	}
 	if _, ok := l.at[path]; !ok {
 		l.at[path] = l.lines.place(int(r.Offset))
 	}
@@ -63,7 +70,7 @@ func (l *locator) put(path string, r unstable.Range) {
 // header notes a [table] or [[array of tables]] and returns its path.
 func (l *locator) header(e *unstable.Node) string {
 	path := ""
-	for it := e.Key(); it.Next(); {
+	for it := e.Key(); it.Next() && len(path) <= maxPath; {
 		key := it.Node()
 		path = join(path, string(key.Data))
 		l.put(path, key.Raw)
@@ -80,7 +87,7 @@ func (l *locator) header(e *unstable.Node) string {
 
 func (l *locator) pair(e *unstable.Node, inside string) {
 	path := inside
-	for it := e.Key(); it.Next(); {
+	for it := e.Key(); it.Next() && len(path) <= maxPath; {
 		path = join(path, string(it.Node().Data))
 		l.put(path, it.Node().Raw)
 	}
@@ -90,6 +97,9 @@ func (l *locator) pair(e *unstable.Node, inside string) {
 // value notes what lies inside v, and returns where its first part stands: an
 // array has no range of its own.
 func (l *locator) value(v *unstable.Node, path string) unstable.Range {
+	if len(path) > maxPath {
+		return v.Raw
+	}
 	switch v.Kind {
 	case unstable.InlineTable:
 		for it := v.Children(); it.Next(); {
