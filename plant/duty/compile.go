@@ -1,6 +1,9 @@
 package duty
 
-import "math"
+import (
+	"fmt"
+	"math"
+)
 
 // Program is a duty made ready to be walked. It is read-only.
 type Program struct {
@@ -10,6 +13,7 @@ type Program struct {
 // node is a leg made ready: a leaf with its values, or a group.
 type node struct {
 	kind     Kind
+	key      string // the TOML file's, for messages
 	repeat   int
 	children []node
 	topLeg   int     // 1-based, 0 for the root
@@ -22,27 +26,37 @@ type node struct {
 	value    []float64
 	stepS    float64 // at[k] is k·stepS to the bit; 0: uneven
 	passS    float64 // a leaf's length, a group's cap; +Inf: none
+	pulseS   float64 // pulses
 
 	// regular says that nothing but a stop of its own or around it makes it
 	// last other than totalS; exact, that it has none of its own.
 	regular, exact bool
 	ownStops       bool
+	eachS          float64 // a pass, at most
 	totalS         float64 // all passes
 	// offset is when each child begins, counted from the last irregular one
 	// before it.
 	offset []float64
 }
 
-// Compile makes d ready for a cell of nameplate capacityAh. It returns
-// d.Validate's error.
+// Compile makes d ready for a cell of nameplate capacityAh, > 0 and finite. The
+// error is d.Validate's, or a *ValueError where what a leg asks for is too
+// large to be a number.
 func Compile(d *Duty, capacityAh float64) (*Program, error) {
 	if err := d.Validate(); err != nil {
 		return nil, err
 	}
+	if !positive.ok(capacityAh) {
+		return nil, bad("capacity_ah", capacityAh, positive.allowed)
+	}
 	b := builder{duty: d, capacityAh: capacityAh}
 	p := &Program{root: node{kind: Group, repeat: 1, passS: math.Inf(1)}}
 	for i := range d.Legs {
-		p.root.children = append(p.root.children, b.node(&d.Legs[i], 0, i+1, nil, ""))
+		n := b.node(&d.Legs[i], fmt.Sprintf("leg[%d]", i), 0, i+1, nil, "")
+		p.root.children = append(p.root.children, n)
+	}
+	if b.err != nil {
+		return nil, b.err
 	}
 	p.root.measure()
 	return p, nil
@@ -51,10 +65,11 @@ func Compile(d *Duty, capacityAh float64) (*Program, error) {
 type builder struct {
 	duty       *Duty
 	capacityAh float64
+	err        error // the first
 }
 
-func (b *builder) node(l *Leg, depth, topLeg int, outer []Stop, atLimit AtLimit) node {
-	n := node{kind: l.Kind, repeat: max(1, l.Repeat), topLeg: topLeg, atLimit: atLimit, passS: math.Inf(1)}
+func (b *builder) node(l *Leg, key string, depth, topLeg int, outer []Stop, atLimit AtLimit) node {
+	n := node{kind: l.Kind, key: key, repeat: max(1, l.Repeat), topLeg: topLeg, atLimit: atLimit, passS: math.Inf(1)}
 	if l.AtLimit != "" {
 		n.atLimit = l.AtLimit
 	}
@@ -65,14 +80,24 @@ func (b *builder) node(l *Leg, depth, topLeg int, outer []Stop, atLimit AtLimit)
 	}
 	if l.Kind == Group {
 		for i := range l.Legs {
-			n.children = append(n.children, b.node(&l.Legs[i], depth+1, topLeg, n.stops, n.atLimit))
+			n.children = append(n.children, b.node(&l.Legs[i], fmt.Sprintf("%s.leg[%d]", key, i), depth+1, topLeg, n.stops, n.atLimit))
 		}
 	} else {
 		b.leaf(&n, l)
 		n.stepS = evenStepS(n.at)
+		b.finite(&n)
 	}
 	n.measure()
 	return n
+}
+
+// finite checks that what a leaf asks for is a number.
+func (b *builder) finite(n *node) {
+	for k, v := range n.value {
+		if !finiteNumber.ok(v) && b.err == nil {
+			b.err = bad(n.key, fmt.Sprintf("%g asked for from %g s on", v, n.at[k]), "currents and powers that are finite numbers")
+		}
+	}
 }
 
 // evenStepS returns the one distance of all changes, or 0.
@@ -106,9 +131,9 @@ func (n *node) measure() {
 		}
 		pass = min(pass, sum)
 	}
-	n.regular = n.regular && !math.IsInf(pass, 1)
+	n.eachS, n.totalS = pass, pass*float64(n.repeat)
+	n.regular = n.regular && !math.IsInf(n.totalS, 1)
 	n.exact = n.regular && !n.ownStops
-	n.totalS = pass * float64(n.repeat)
 }
 
 func (b *builder) stopsOf(l *Leg, depth, topLeg int) []Stop {
@@ -132,11 +157,15 @@ func (b *builder) stopsOf(l *Leg, depth, topLeg int) []Stop {
 	if given(l.UntilVoltageV) {
 		out = append(out, Stop{StopVoltage, side, l.UntilVoltageV, depth, topLeg})
 	}
+	below := -1.0 // of two, the larger is met first
 	if given(l.UntilCurrentA) {
-		out = append(out, Stop{StopCurrent, SideFalling, l.UntilCurrentA, depth, topLeg})
+		below = l.UntilCurrentA
 	}
 	if given(l.UntilCRate) {
-		out = append(out, Stop{StopCurrent, SideFalling, l.UntilCRate * b.capacityAh, depth, topLeg})
+		below = max(below, l.UntilCRate*b.capacityAh)
+	}
+	if below >= 0 {
+		out = append(out, Stop{StopCurrent, SideFalling, below, depth, topLeg})
 	}
 	return out
 }
@@ -216,6 +245,7 @@ func (n *node) steps(q Quantity, steps []span, scale float64) {
 
 func (b *builder) pulses(n *node, l *Leg) {
 	i := b.currentA(l)
+	n.pulseS = l.PulseS
 	count := max(1, l.Count)
 	var steps []span
 	for g := range count {

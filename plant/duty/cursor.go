@@ -133,7 +133,7 @@ func (c *Cursor) passOver(i int, endS float64) {
 	start := endS
 	if f.n.regular {
 		// from the leg's start, so that many passes do not drift
-		start = f.startS + float64(f.pass)*(f.n.totalS/float64(f.n.repeat))
+		start = f.startS + float64(f.pass)*f.n.eachS
 	}
 	c.begin(i, start)
 }

@@ -30,6 +30,9 @@ func bad(key string, found any, allowed string) error {
 // MaxDepth is how deep groups may nest.
 const MaxDepth = 8
 
+// maxCount bounds the groups of one pulses leg, which are laid out one by one.
+const maxCount = 100_000
+
 // Validate checks every rule of a duty and returns the first breach as a
 // *ValueError.
 func (d *Duty) Validate() error {
@@ -45,8 +48,8 @@ func (d *Duty) Validate() error {
 }
 
 func (d *Duty) validateLegs(legs []Leg, key string, depth int) error {
-	if depth >= MaxDepth {
-		return bad(key, fmt.Sprintf("groups nested %d deep", depth+1), fmt.Sprintf("at most %d", MaxDepth))
+	if depth > MaxDepth {
+		return bad(key, fmt.Sprintf("groups nested %d deep", depth), fmt.Sprintf("at most %d", MaxDepth))
 	}
 	for i := range legs {
 		at := fmt.Sprintf("%s[%d]", key, i)
@@ -115,6 +118,15 @@ func (l *Leg) numbers() []field {
 	}
 }
 
+// NewLeg returns a leg of a kind with no number given.
+func NewLeg(kind Kind) Leg {
+	l := Leg{Kind: kind}
+	for _, f := range l.numbers() {
+		*f.value = math.NaN()
+	}
+	return l
+}
+
 func given(v float64) bool { return !math.IsNaN(v) }
 
 func (d *Duty) validateLeg(l *Leg, at string) error {
@@ -146,8 +158,8 @@ func (d *Duty) validateLeg(l *Leg, at string) error {
 		return err
 	}
 	if l.Vehicle != nil {
-		if l.Kind != Speed && l.Kind != Profile {
-			return bad(at+".vehicle", "a vehicle", "no vehicle in a leg of kind "+string(l.Kind))
+		if l.Kind != Speed && (l.Kind != Profile || l.ProfileName != "nedc") {
+			return bad(at+".vehicle", "a vehicle", `a vehicle only in a leg of kind "speed", or of "profile" with name "nedc"`)
 		}
 		if err := l.Vehicle.validate(at + ".vehicle"); err != nil {
 			return err
@@ -229,8 +241,8 @@ func (l *Leg) validatePulses(at string) error {
 		return err
 	}
 	switch {
-	case l.Count < 0:
-		return bad(at+".count", l.Count, "a whole number ≥ 1")
+	case l.Count < 0 || l.Count > maxCount:
+		return bad(at+".count", l.Count, fmt.Sprintf("a whole number from 1 to %d (repeat goes on beyond)", maxCount))
 	case l.CurrentA == 0 || l.CRate == 0:
 		return bad(at+".current_a", 0, "a current that is not 0")
 	case !given(l.PulseS):
@@ -241,6 +253,16 @@ func (l *Leg) validatePulses(at string) error {
 		return bad(at+".step_c_rate", "nothing", "a rate > 0, with soc_step")
 	case given(l.StepCRate) && !given(l.SOCStep), given(l.StepRestS) && !given(l.SOCStep):
 		return bad(at+".soc_step", "nothing", "a share of the capacity, with step_c_rate and step_rest_s")
+	}
+	group := 2 * (l.PulseS + l.RestS)
+	if given(l.SOCStep) && l.SOCStep > 0 {
+		group += l.SOCStep * 3600 / l.StepCRate
+	}
+	if given(l.StepRestS) {
+		group += l.StepRestS
+	}
+	if length := group * float64(max(1, l.Count)); math.IsInf(length, 0) {
+		return bad(at, "pulses without an end", "pulses, rests and steps of a finite length in all")
 	}
 	return nil
 }
