@@ -1,9 +1,7 @@
 package duty_test
 
 import (
-	"errors"
 	"math"
-	"strings"
 	"testing"
 
 	"pgregory.net/rapid"
@@ -220,54 +218,5 @@ func TestCursorsAllocateNothing(t *testing.T) {
 		}
 	}); n != 0 {
 		t.Errorf("%g allocations", n)
-	}
-}
-
-func TestBadDutiesAreRefused(t *testing.T) {
-	for name, c := range map[string]struct {
-		leg duty.Leg
-		key string
-	}{
-		"no such kind":       {duty.Leg{Kind: "pause"}, "leg[0].kind"},
-		"no current":         {func() duty.Leg { l := leg(duty.Current); l.DurationS = 5; return l }(), "leg[0].current_a"},
-		"two currents":       {func() duty.Leg { l := current(1, 5); l.CRate = 1; return l }(), "leg[0].c_rate"},
-		"no end":             {func() duty.Leg { l := current(1, nan); return l }(), "leg[0].duration_s"},
-		"rest that may last": {func() duty.Leg { l := leg(duty.Rest); l.UntilSOC = 0.5; return l }(), "leg[0].duration_s"},
-		"negative duration":  {current(1, -5), "leg[0].duration_s"},
-		"infinite current":   {current(math.Inf(1), 5), "leg[0].current_a"},
-		"SOC stop above 1":   {func() duty.Leg { l := current(1, 5); l.UntilSOC = 1.5; return l }(), "leg[0].until_soc"},
-		"power in a rest":    {func() duty.Leg { l := leg(duty.Rest); l.DurationS, l.PowerW = 5, 3; return l }(), "leg[0].power_w"},
-		"empty group":        {leg(duty.Group), "leg[0].leg"},
-		"speed without car": {func() duty.Leg {
-			l := leg(duty.Speed)
-			l.TimeS, l.SpeedMps = []float64{0, 1}, []float64{0, 1}
-			return l
-		}(), "leg[0].vehicle"},
-		"unknown profile":   {profile("fuds"), "leg[0].name"},
-		"profile unscaled":  {profile("dst"), "leg[0].peak_power_w"},
-		"trace of one":      {func() duty.Leg { l := leg(duty.Trace); l.TimeS, l.TraceA = []float64{0}, []float64{1}; return l }(), "leg[0].time_s"},
-		"trace from 1":      {func() duty.Leg { l := leg(duty.Trace); l.TimeS, l.TraceA = []float64{1, 2}, []float64{1, 1}; return l }(), "leg[0].time_s[0]"},
-		"pulses of nothing": {func() duty.Leg { l := leg(duty.Pulses); l.CurrentA = 1; return l }(), "leg[0].pulse_s"},
-		"at limit":          {func() duty.Leg { l := current(1, 5); l.AtLimit = "stop"; return l }(), "leg[0].at_limit"},
-	} {
-		t.Run(name, func(t *testing.T) {
-			_, err := duty.Compile(&duty.Duty{Legs: []duty.Leg{c.leg}}, 5)
-			var v *duty.ValueError
-			if !errors.As(err, &v) || v.Key != c.key || !strings.Contains(err.Error(), "allowed is") {
-				t.Errorf("got %v, want an error at %s", err, c.key)
-			}
-		})
-	}
-	deep := current(1, 1)
-	for range 9 {
-		g := leg(duty.Group)
-		g.Legs = []duty.Leg{deep}
-		deep = g
-	}
-	if _, err := duty.Compile(&duty.Duty{Legs: []duty.Leg{deep}}, 5); err == nil || !strings.Contains(err.Error(), "nested") {
-		t.Errorf("ten deep: %v", err)
-	}
-	if _, err := duty.Compile(&duty.Duty{}, 5); err == nil {
-		t.Error("no legs: accepted")
 	}
 }

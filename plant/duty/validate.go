@@ -30,6 +30,9 @@ func bad(key string, found any, allowed string) error {
 // MaxDepth is how deep groups may nest.
 const MaxDepth = 8
 
+// longestS bounds every length, so that no sum of them is infinite.
+const longestS = 1e12
+
 // maxCount bounds the groups of one pulses leg, which are laid out one by one.
 const maxCount = 100_000
 
@@ -79,6 +82,8 @@ var (
 	finiteNumber = rule{func(v float64) bool { return !math.IsNaN(v) && !math.IsInf(v, 0) }, "a finite number"}
 	notNegative  = rule{func(v float64) bool { return v >= 0 && !math.IsInf(v, 0) }, "a finite number ≥ 0"}
 	positive     = rule{func(v float64) bool { return v > 0 && !math.IsInf(v, 0) }, "a finite number > 0"}
+	length       = rule{func(v float64) bool { return v > 0 && v <= longestS }, "a finite number > 0, at most 1e12"}
+	pause        = rule{func(v float64) bool { return v >= 0 && v <= longestS }, "a finite number ≥ 0, at most 1e12"}
 	share        = rule{func(v float64) bool { return v >= 0 && v <= 1 }, "0 to 1"}
 	aboveShare   = rule{func(v float64) bool { return v > 0 && v <= 1 }, "above 0, at most 1"}
 )
@@ -99,7 +104,7 @@ type field struct {
 
 func (l *Leg) numbers() []field {
 	return []field{
-		{"duration_s", &l.DurationS, nil, positive},
+		{"duration_s", &l.DurationS, nil, length},
 		{"until_soc", &l.UntilSOC, nil, share},
 		{"until_voltage_v", &l.UntilVoltageV, nil, finiteNumber},
 		{"until_current_a", &l.UntilCurrentA, nil, notNegative},
@@ -108,12 +113,12 @@ func (l *Leg) numbers() []field {
 		{"c_rate", &l.CRate, []Kind{Current, Pulses, Profile}, finiteNumber},
 		{"power_w", &l.PowerW, []Kind{Power}, finiteNumber},
 		{"voltage_v", &l.VoltageV, []Kind{HoldVoltage}, positive},
-		{"pulse_s", &l.PulseS, []Kind{Pulses}, positive},
-		{"rest_s", &l.RestS, []Kind{Pulses}, notNegative},
+		{"pulse_s", &l.PulseS, []Kind{Pulses}, length},
+		{"rest_s", &l.RestS, []Kind{Pulses}, pause},
 		{"return_ratio", &l.ReturnRatio, []Kind{Pulses}, notNegative},
 		{"soc_step", &l.SOCStep, []Kind{Pulses}, share},
 		{"step_c_rate", &l.StepCRate, []Kind{Pulses}, positive},
-		{"step_rest_s", &l.StepRestS, []Kind{Pulses}, notNegative},
+		{"step_rest_s", &l.StepRestS, []Kind{Pulses}, pause},
 		{"peak_power_w", &l.PeakPowerW, []Kind{Profile}, positive},
 	}
 }
@@ -254,15 +259,10 @@ func (l *Leg) validatePulses(at string) error {
 	case given(l.StepCRate) && !given(l.SOCStep), given(l.StepRestS) && !given(l.SOCStep):
 		return bad(at+".soc_step", "nothing", "a share of the capacity, with step_c_rate and step_rest_s")
 	}
-	group := 2 * (l.PulseS + l.RestS)
 	if given(l.SOCStep) && l.SOCStep > 0 {
-		group += l.SOCStep * 3600 / l.StepCRate
-	}
-	if given(l.StepRestS) {
-		group += l.StepRestS
-	}
-	if length := group * float64(max(1, l.Count)); math.IsInf(length, 0) {
-		return bad(at, "pulses without an end", "pulses, rests and steps of a finite length in all")
+		if stepS := l.SOCStep * 3600 / l.StepCRate; !length.ok(stepS) {
+			return bad(at+".step_c_rate", l.StepCRate, fmt.Sprintf("a rate that moves soc_step in at most %g s", longestS))
+		}
 	}
 	return nil
 }
@@ -307,8 +307,8 @@ func (l *Leg) validateColumns(at string) error {
 		switch {
 		case k == 0 && t != 0:
 			return bad(key, t, "0: times start there")
-		case !finiteNumber.ok(t):
-			return bad(key, t, finiteNumber.allowed)
+		case !pause.ok(t):
+			return bad(key, t, pause.allowed)
 		case k > 0 && t < l.TimeS[k-1]:
 			return bad(key, t, fmt.Sprintf("at least the one before it (%g): time does not go backward", l.TimeS[k-1]))
 		case k > 0 && t == l.TimeS[k-1] && l.Kind == Speed:
