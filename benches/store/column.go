@@ -4,9 +4,7 @@ import (
 	"errors"
 	"fmt"
 	"io"
-	"math"
 	"math/big"
-	"strconv"
 	"unicode/utf8"
 
 	"github.com/parquet-go/parquet-go"
@@ -272,49 +270,23 @@ func (r *columnReader) whole(n int64) {
 	r.work.nums = append(r.work.nums, scaled(big.NewInt(n), r.f.scale))
 }
 
-// bytes adds a text, or the mantissa of a decimal: two's complement, the most
-// significant byte first.
+// bytes adds a text, the mantissa of a decimal, or a half-precision number.
 func (r *columnReader) bytes(b []byte) error {
-	if !r.f.decimal {
-		s, ok := r.known[string(b)]
-		if !ok {
-			if !utf8.Valid(b) {
-				return errors.New("a text is not UTF-8")
-			}
-			s = string(b)
-			r.known[s] = s
-		}
-		r.work.texts = append(r.work.texts, s)
+	switch {
+	case r.f.decimal:
+		return r.decimal(b)
+	case r.f.half:
+		r.work.nums = append(r.work.nums, half(b))
 		return nil
 	}
-	m := new(big.Int).SetBytes(b)
-	if len(b) > 0 && b[0]&0x80 != 0 {
-		m.Sub(m, new(big.Int).Lsh(big.NewInt(1), uint(8*len(b))))
-	}
-	if r.out.kind == scenario.Int {
-		if !m.IsInt64() {
-			return errors.New("a decimal is beyond 64 bits")
+	s, ok := r.known[string(b)]
+	if !ok {
+		if !utf8.Valid(b) {
+			return errors.New("a text is not UTF-8")
 		}
-		r.work.ints = append(r.work.ints, m.Int64())
-		return nil
+		s = string(b)
+		r.known[s] = s
 	}
-	r.work.nums = append(r.work.nums, scaled(m, r.f.scale))
+	r.work.texts = append(r.work.texts, s)
 	return nil
 }
-
-// scaled returns m / 10^scale, correctly rounded.
-func scaled(m *big.Int, scale int) float64 {
-	// Both sides exact in a double: one division rounds once.
-	if m.IsInt64() && scale <= 22 && math.Abs(float64(m.Int64())) < 1<<53 {
-		return float64(m.Int64()) / pow10[scale]
-	}
-	x, err := strconv.ParseFloat(m.String()+"e-"+strconv.Itoa(scale), 64)
-	if err != nil {
-		return math.Inf(m.Sign())
-	}
-	return x
-}
-
-// pow10 holds the powers of ten that a double keeps exactly.
-var pow10 = [...]float64{1, 1e1, 1e2, 1e3, 1e4, 1e5, 1e6, 1e7, 1e8, 1e9, 1e10, 1e11,
-	1e12, 1e13, 1e14, 1e15, 1e16, 1e17, 1e18, 1e19, 1e20, 1e21, 1e22}

@@ -20,8 +20,9 @@ type field struct {
 	physical format.Type
 	unsigned bool
 	decimal  bool
-	scale    int // of a decimal: value = mantissa / 10^scale
-	length   int // of a fixed-length value, bytes
+	half     bool // half-precision numbers, kept in two bytes
+	scale    int  // of a decimal: value = mantissa / 10^scale
+	length   int  // of a fixed-length value, bytes
 	optional bool
 }
 
@@ -70,6 +71,12 @@ func newField(e *format.SchemaElement, leaf int) field {
 		if f.kind != scenario.Int {
 			f.refuse(lt.String())
 		}
+	case *format.Float16Type:
+		if f.physical != format.FixedLenByteArray || f.length != 2 {
+			f.refuse("misannotated FLOAT16")
+			break
+		}
+		f.refused, f.half, f.kind = "", true, scenario.Number
 	case *format.NullType:
 		// Every value is null: whatever the column is for, its default stands.
 	default:
