@@ -56,9 +56,11 @@ func TestInterruptAndContinue(t *testing.T) {
 		t.Errorf("printed %q, which does not say that it is incomplete", out)
 	}
 	call(t, statusDone, "show", in("broken"))
+	first := told
 	_, told = call(t, statusDone, args...)
-	if !strings.Contains(told, "scenarios were finished already") {
-		t.Errorf("told %q", told)
+	// On a slow machine the signal may come before the first scenario is done.
+	if !strings.Contains(first, " 0 of 3000 ") && !strings.Contains(told, "scenarios were finished already") {
+		t.Errorf("told %q after %q", told, first)
 	}
 	call(t, statusDone, "run", in("many.parquet"), "-e", in("ekf.toml"), "-o", in("whole"), "--workers", "1")
 	a, errA := os.ReadFile(in("broken/results.parquet"))
