@@ -8,6 +8,7 @@ import (
 	"path/filepath"
 	"reflect"
 	"strings"
+	"syscall"
 	"testing"
 
 	"github.com/google/go-cmp/cmp"
@@ -231,6 +232,16 @@ func TestNoPlaceToWrite(t *testing.T) {
 		}
 	} else if !errors.Is(err, os.ErrPermission) {
 		t.Error(err)
+	}
+}
+
+// A folder that cannot be synced is no failure of the file in it; a disk that
+// fails is.
+func TestCannotSync(t *testing.T) {
+	for err, want := range map[error]bool{syscall.EINVAL: true, syscall.ENOTSUP: true, syscall.EACCES: true, syscall.EIO: false, syscall.ENOSPC: false} {
+		if got := cannotSync(errors.Join(&os.PathError{Op: "sync", Path: ".", Err: err}, nil)); got != want {
+			t.Errorf("%v: passed over is %v", err, got)
+		}
 	}
 }
 
