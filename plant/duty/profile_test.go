@@ -281,3 +281,84 @@ func TestRoadLoadAtSteadySpeed(t *testing.T) {
 		t.Errorf("braking: %g W, want %g", got, want)
 	}
 }
+
+// Every profile of the list can be run, lasts as long as listed, and is scaled
+// by what is listed.
+func TestProfilesLastAsListed(t *testing.T) {
+	car := &duty.Vehicle{MassKg: 900, AirDensityKgPerM3: 1.2, DriveEfficiency: 1, Series: 1, Parallel: 1}
+	for _, info := range duty.Profiles() {
+		l := profile(info.Name)
+		d := &duty.Duty{}
+		switch info.Scale {
+		case "peak_power_w":
+			l.PeakPowerW = 40
+		case "vehicle":
+			d.Vehicle = car
+		case "current_a or c_rate":
+			l.CurrentA = -3
+		default:
+			t.Errorf("%s is scaled by %q", info.Name, info.Scale)
+		}
+		l.Repeat = 3
+		d.Legs = []duty.Leg{l}
+		p, err := duty.Compile(d, 5)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if total, exact := p.TotalS(); !exact || total != 3*info.DurationS || info.Source == "" {
+			t.Errorf("%s: three passes last %g s (%t), listed %g s; source %q", info.Name, total, exact, info.DurationS, info.Source)
+		}
+	}
+}
+
+// The built-in driving cycle is its speeds as a speed leg.
+func TestNEDCProfileIsASpeedLeg(t *testing.T) {
+	car := &duty.Vehicle{MassKg: 900, RollingCoefficient: 0.01, DragAreaM2: 0.6, AirDensityKgPerM3: 1.2, DriveEfficiency: 0.9, RegenerationEfficiency: 0.6,
+		AuxiliaryW: 300, Series: 10, Parallel: 2}
+	l := leg(duty.Speed)
+	l.TimeS, l.SpeedMps = duty.NEDC()
+	want := walk(t, &duty.Duty{Legs: []duty.Leg{l}, Vehicle: car}, 5)
+	p := profile("nedc")
+	p.Vehicle = car // its own goes before the duty's
+	got := walk(t, &duty.Duty{Legs: []duty.Leg{p}, Vehicle: &duty.Vehicle{MassKg: 1, AirDensityKgPerM3: 1, DriveEfficiency: 1, Series: 1, Parallel: 1}}, 5)
+	if len(want) != 1180 || !slices.Equal(got, want) {
+		t.Errorf("%d demands, %d as a speed leg", len(got), len(want))
+	}
+}
+
+// A duration cuts a pass short, or lets its last value flow on: a trace's last
+// row, a vehicle's steady last speed.
+func TestDurationsCutAndExtend(t *testing.T) {
+	car := &duty.Vehicle{MassKg: 900, DragAreaM2: 0.5, AirDensityKgPerM3: 1.2, DriveEfficiency: 1, RegenerationEfficiency: 1, Series: 1, Parallel: 1}
+	tr := leg(duty.Trace)
+	tr.TimeS, tr.TraceW = []float64{0, 2, 2, 5}, []float64{1, 2, 3, 4} // of two rows at one time the last counts
+	sp := leg(duty.Speed)
+	sp.TimeS, sp.SpeedMps = []float64{0, 2, 4}, []float64{0, 8, 10}
+	inertia := func(from, to float64) float64 {
+		mean := (from + to) / 2
+		return 900*(to*to-from*from)/4 + 0.5*1.2*0.5*mean*mean*mean
+	}
+	const w = duty.PowerDemand
+	for _, c := range []struct {
+		leg       duty.Leg
+		durationS float64
+		want      []step
+	}{
+		{tr, nan, []step{{w, 1, 0, 2}, {w, 3, 2, 5}}},
+		{tr, 3, []step{{w, 1, 0, 2}, {w, 3, 2, 3}}},
+		{tr, 2, []step{{w, 1, 0, 2}}},
+		{tr, 9, []step{{w, 1, 0, 2}, {w, 3, 2, 5}, {w, 4, 5, 9}}},
+		{sp, nan, []step{{w, inertia(0, 8), 0, 2}, {w, inertia(8, 10), 2, 4}}},
+		{sp, 3, []step{{w, inertia(0, 8), 0, 2}, {w, inertia(8, 10), 2, 3}}},
+		{sp, 7, []step{{w, inertia(0, 8), 0, 2}, {w, inertia(8, 10), 2, 4}, {w, 0.5 * 1.2 * 0.5 * 1000, 4, 7}}},
+	} {
+		c.leg.DurationS = c.durationS
+		got := walk(t, &duty.Duty{Legs: []duty.Leg{c.leg}, Vehicle: car}, 5)
+		same := func(a, b step) bool {
+			return a.q == b.q && math.Abs(a.value-b.value) <= 1e-9 && a.fromS == b.fromS && a.endS == b.endS
+		}
+		if !slices.EqualFunc(got, c.want, same) {
+			t.Errorf("%s for %g s: %+v, want %+v", c.leg.Kind, c.durationS, got, c.want)
+		}
+	}
+}

@@ -31,7 +31,10 @@ func bad(key string, found any, allowed string) error {
 const MaxDepth = 8
 
 // longestS bounds every length, so that no sum of them is infinite.
-const longestS = 1e12
+const (
+	longestS = 1e12
+	noLonger = "at most 1e+12 s"
+)
 
 // maxCount bounds the groups of one pulses leg, which are laid out one by one.
 const maxCount = 100_000
@@ -82,8 +85,6 @@ var (
 	finiteNumber = rule{func(v float64) bool { return !math.IsNaN(v) && !math.IsInf(v, 0) }, "a finite number"}
 	notNegative  = rule{func(v float64) bool { return v >= 0 && !math.IsInf(v, 0) }, "a finite number ≥ 0"}
 	positive     = rule{func(v float64) bool { return v > 0 && !math.IsInf(v, 0) }, "a finite number > 0"}
-	length       = rule{func(v float64) bool { return v > 0 && v <= longestS }, "a finite number > 0, at most 1e12"}
-	pause        = rule{func(v float64) bool { return v >= 0 && v <= longestS }, "a finite number ≥ 0, at most 1e12"}
 	share        = rule{func(v float64) bool { return v >= 0 && v <= 1 }, "0 to 1"}
 	aboveShare   = rule{func(v float64) bool { return v > 0 && v <= 1 }, "above 0, at most 1"}
 )
@@ -104,7 +105,7 @@ type field struct {
 
 func (l *Leg) numbers() []field {
 	return []field{
-		{"duration_s", &l.DurationS, nil, length},
+		{"duration_s", &l.DurationS, nil, positive},
 		{"until_soc", &l.UntilSOC, nil, share},
 		{"until_voltage_v", &l.UntilVoltageV, nil, finiteNumber},
 		{"until_current_a", &l.UntilCurrentA, nil, notNegative},
@@ -113,12 +114,12 @@ func (l *Leg) numbers() []field {
 		{"c_rate", &l.CRate, []Kind{Current, Pulses, Profile}, finiteNumber},
 		{"power_w", &l.PowerW, []Kind{Power}, finiteNumber},
 		{"voltage_v", &l.VoltageV, []Kind{HoldVoltage}, positive},
-		{"pulse_s", &l.PulseS, []Kind{Pulses}, length},
-		{"rest_s", &l.RestS, []Kind{Pulses}, pause},
+		{"pulse_s", &l.PulseS, []Kind{Pulses}, positive},
+		{"rest_s", &l.RestS, []Kind{Pulses}, notNegative},
 		{"return_ratio", &l.ReturnRatio, []Kind{Pulses}, notNegative},
 		{"soc_step", &l.SOCStep, []Kind{Pulses}, share},
 		{"step_c_rate", &l.StepCRate, []Kind{Pulses}, positive},
-		{"step_rest_s", &l.StepRestS, []Kind{Pulses}, pause},
+		{"step_rest_s", &l.StepRestS, []Kind{Pulses}, notNegative},
 		{"peak_power_w", &l.PeakPowerW, []Kind{Profile}, positive},
 	}
 }
@@ -154,6 +155,9 @@ func (d *Duty) validateLeg(l *Leg, at string) error {
 		}
 		if !f.rule.ok(v) {
 			return bad(at+"."+f.key, v, f.rule.allowed)
+		}
+		if v > longestS && strings.HasSuffix(f.key, "_s") {
+			return bad(at+"."+f.key, v, noLonger)
 		}
 	}
 	if l.Count != 0 && l.Kind != Pulses {
@@ -248,8 +252,10 @@ func (l *Leg) validatePulses(at string) error {
 	switch {
 	case l.Count < 0 || l.Count > maxCount:
 		return bad(at+".count", l.Count, fmt.Sprintf("a whole number from 1 to %d (repeat goes on beyond)", maxCount))
-	case l.CurrentA == 0 || l.CRate == 0:
+	case l.CurrentA == 0:
 		return bad(at+".current_a", 0, "a current that is not 0")
+	case l.CRate == 0:
+		return bad(at+".c_rate", 0, "a rate that is not 0")
 	case !given(l.PulseS):
 		return bad(at+".pulse_s", "nothing", "a number of seconds > 0")
 	case !given(l.RestS):
@@ -258,11 +264,8 @@ func (l *Leg) validatePulses(at string) error {
 		return bad(at+".step_c_rate", "nothing", "a rate > 0, with soc_step")
 	case given(l.StepCRate) && !given(l.SOCStep), given(l.StepRestS) && !given(l.SOCStep):
 		return bad(at+".soc_step", "nothing", "a share of the capacity, with step_c_rate and step_rest_s")
-	}
-	if given(l.SOCStep) && l.SOCStep > 0 {
-		if stepS := l.SOCStep * 3600 / l.StepCRate; !length.ok(stepS) {
-			return bad(at+".step_c_rate", l.StepCRate, fmt.Sprintf("a rate that moves soc_step in at most %g s", longestS))
-		}
+	case l.SOCStep*3600/l.StepCRate > longestS: // false where neither is given
+		return bad(at+".step_c_rate", l.StepCRate, "a rate that moves soc_step in "+noLonger)
 	}
 	return nil
 }
@@ -307,8 +310,10 @@ func (l *Leg) validateColumns(at string) error {
 		switch {
 		case k == 0 && t != 0:
 			return bad(key, t, "0: times start there")
-		case !pause.ok(t):
-			return bad(key, t, pause.allowed)
+		case !finiteNumber.ok(t):
+			return bad(key, t, finiteNumber.allowed)
+		case t > longestS:
+			return bad(key, t, noLonger)
 		case k > 0 && t < l.TimeS[k-1]:
 			return bad(key, t, fmt.Sprintf("at least the one before it (%g): time does not go backward", l.TimeS[k-1]))
 		case k > 0 && t == l.TimeS[k-1] && l.Kind == Speed:

@@ -98,7 +98,8 @@ func TestBadDutiesAreRefused(t *testing.T) {
 		"times in a rest":      {from(duty.Rest, func(l *duty.Leg) { l.TimeS = []float64{0, 1} }), "leg[0].time_s"},
 		"speed in a trace":     {from(duty.Trace, func(l *duty.Leg) { l.SpeedMps = l.TraceA }), "leg[0].speed_mps"},
 
-		"pulses of no current":  {from(duty.Pulses, func(l *duty.Leg) { l.CRate = 0 }), "leg[0].current_a"},
+		"pulses of no current":  {from(duty.Pulses, func(l *duty.Leg) { l.CurrentA, l.CRate = 0, nan }), "leg[0].current_a"},
+		"pulses of no rate":     {from(duty.Pulses, func(l *duty.Leg) { l.CRate = 0 }), "leg[0].c_rate"},
 		"pulses of no length":   {from(duty.Pulses, func(l *duty.Leg) { l.PulseS = nan }), "leg[0].pulse_s"},
 		"pulses without rest":   {from(duty.Pulses, func(l *duty.Leg) { l.RestS = nan }), "leg[0].rest_s"},
 		"negative count":        {from(duty.Pulses, func(l *duty.Leg) { l.Count = -3 }), "leg[0].count"},
@@ -110,6 +111,8 @@ func TestBadDutiesAreRefused(t *testing.T) {
 		"pulses without an end": {from(duty.Pulses, func(l *duty.Leg) { l.PulseS = 1e13 }), "leg[0].pulse_s"},
 		"steps without an end":  {from(duty.Pulses, func(l *duty.Leg) { l.SOCStep, l.StepCRate = 0.1, 1e-300 }), "leg[0].step_c_rate"},
 		"trace without an end":  {trace([]float64{0, math.Inf(1)}, []float64{1, 1}), "leg[0].time_s[1]"},
+		"trace of an age":       {trace([]float64{0, 1e13}, []float64{1, 1}), "leg[0].time_s[1]"},
+		"current for an age":    {current(1, 1e13), "leg[0].duration_s"},
 
 		"speed without car": {from(duty.Speed, func(l *duty.Leg) { l.Vehicle = nil }), "leg[0].vehicle"},
 		"nedc without car":  {from(duty.Profile, func(l *duty.Leg) { l.ProfileName, l.PeakPowerW = "nedc", nan }), "leg[0].vehicle"},
