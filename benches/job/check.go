@@ -28,34 +28,20 @@ func checkSet(set *scenario.Set, report *Reporter) error {
 			return cmpText(a.other, b.other)
 		})
 	}
+	programs := map[string]*duty.Program{}
 	for _, p := range ordered(withCell) {
-		if _, err := duty.Compile(set.Duties[p.duty], set.Cells[p.other].CapacityAh); err != nil {
+		program, err := duty.Compile(set.Duties[p.duty], set.Cells[p.other].CapacityAh)
+		if err != nil {
 			return fmt.Errorf("duty %s with cell %s: %w", p.duty, p.other, err)
 		}
+		programs[p.duty] = program
 	}
 	for _, p := range ordered(withSensors) {
-		periodS := set.Sensors[p.other].SamplePeriodS
-		if key, pulseS, ok := shortPulse(set.Duties[p.duty].Legs, "leg", periodS); ok {
-			report.warn("duty %s: %s.pulse_s is %g, shorter than the sample period %g s of sensors %s: a reading may miss the pulse, its charge is counted all the same",
-				p.duty, key, pulseS, periodS, p.other)
+		for _, w := range programs[p.duty].Warnings(set.Sensors[p.other].SamplePeriodS) {
+			report.warn("duty %s under sensors %s: %s", p.duty, p.other, w)
 		}
 	}
 	return nil
-}
-
-// shortPulse finds the first leg whose pulses are shorter than a sample period.
-func shortPulse(legs []duty.Leg, at string, periodS float64) (key string, pulseS float64, ok bool) {
-	for i := range legs {
-		l := &legs[i]
-		here := fmt.Sprintf("%s[%d]", at, i)
-		if l.Kind == duty.Pulses && l.PulseS < periodS {
-			return here, l.PulseS, true
-		}
-		if key, pulseS, ok = shortPulse(l.Legs, here+".leg", periodS); ok {
-			return key, pulseS, true
-		}
-	}
-	return "", 0, false
 }
 
 func cmpText(a, b string) int {
