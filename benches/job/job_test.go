@@ -342,7 +342,7 @@ leg = [{ kind = "rest", duration_s = 10.0 }, { kind = "pulses", current_a = 1.0,
 		Report: Reporter{Warn: func(s string) { told = append(told, s) }}}); err != nil {
 		t.Fatal(err)
 	}
-	if len(told) != 1 || !strings.Contains(told[0], "leg[1].pulse_s is 0.5, shorter than the sample period 1 s of sensors pack") {
+	if len(told) != 1 || !strings.Contains(told[0], "under sensors pack: leg[1].pulse_s is 0.5, shorter than the sample period 1 s") {
 		t.Errorf("told %q, asked is one warning about the pulse", told)
 	}
 	out, err := Run(context.Background(), w.options("out"))
