@@ -7,12 +7,11 @@ import (
 	"soctrial/plant/duty"
 )
 
-// runLean is the plain case written out: up to two branches of fixed time
-// constants, one temperature, no hysteresis or drift, demands of current
-// without stops. It gives samples from n on until the block is full or
-// something else is needed; the caller's general path then takes one sample.
-// Both paths are the same arithmetic.
-func (p *Plant) runLean(out *Truth, n int) int {
+// runFast is the usual case written out: demands of current without stops that
+// change at samples, one step a sample. It gives samples from n on until the
+// block is full or something else is needed; the caller's general path then
+// takes one sample. The paths are the same arithmetic.
+func (p *Plant) runFast(out *Truth, n int) int {
 	room := out.Len()
 	for n < room {
 		if !p.leanDemand() {
@@ -24,7 +23,15 @@ func (p *Plant) runLean(out *Truth, n int) int {
 		if told == 0 {
 			return n
 		}
-		used := p.leanSamples(out, n, told)
+		var used int
+		if p.lean {
+			used = p.leanSamples(out, n, told)
+		} else {
+			used = p.richSamples(out, n, told)
+		}
+		if p.done {
+			return n + used
+		}
 		if used < told { // a limit: go back to the demand at the sample that met it
 			p.cur = saved
 			p.cur.Currents(out.CurrentA[n:n+used], p.k-int64(used), p.set.PeriodS, tolS(float64(p.k)*p.set.PeriodS))
@@ -49,7 +56,8 @@ func (p *Plant) leanDemand() bool {
 	return true
 }
 
-// leanSamples gives count samples from n on, whose currents are in their
+// leanSamples is the plain cell: up to two branches of fixed time constants,
+// one temperature, no hysteresis or drift. It gives count samples from n on, whose currents are in their
 // column already; fewer where a limit is met. While SOC stays inside one
 // interval of the tables that touches neither end, only the voltage can meet
 // one.

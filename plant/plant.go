@@ -106,7 +106,7 @@ type Plant struct {
 	walkFactor float64
 	capacityAh float64 // now
 
-	lean     bool // nothing but SOC and branches moves: see runLean
+	lean     bool // nothing but SOC and branches moves: see leanSamples
 	cooling  float64
 	heatRise float64 // exp(-k·period/C), ready for the usual step
 
@@ -218,8 +218,8 @@ func (p *Plant) Next(out *Truth) int {
 	out.PeriodS = p.set.PeriodS
 	n, room := 0, out.Len()
 	for n < room && !p.done {
-		if p.lean {
-			n = p.runLean(out, n)
+		if s := &p.set; s.Substeps == 1 {
+			n = p.runFast(out, n)
 			if n >= room || p.done {
 				break
 			}
@@ -241,7 +241,7 @@ func (p *Plant) sample(out *Truth, n int) bool {
 	if !first {
 		u, r0 = p.view.Rest(&p.state), p.view.R0(p.state.SOC)*p.r0Factor
 		if p.set.R0WalkPerSqrtH > 0 {
-			p.walkFactor *= math.Exp(p.set.R0WalkPerSqrtH * math.Sqrt(p.set.PeriodS/3600) * p.walk.Normal())
+			p.walkFactor *= cell.Exp(p.set.R0WalkPerSqrtH * math.Sqrt(p.set.PeriodS/3600) * p.walk.Normal())
 			p.refresh()
 		}
 	}

@@ -203,28 +203,61 @@ func TestChargeIsConserved(t *testing.T) {
 	})
 }
 
-// Whether a scenario takes the lean loop or the general path, and however it is
-// cut into blocks, it is the same scenario.
-func TestLeanAndGeneralPathsAgree(t *testing.T) {
-	legs := []duty.Leg{current(4, 600), leg(duty.Rest, 100.5), current(-2, 700), current(9.5, 1200)}
-	lean := setup(t, plain(), 1, legs...)
-	lean.SOCStart = 0.9
-	a, oa := simulate(t, lean, 256)
-	b, _ := simulate(t, lean, 7)
-	general := lean
-	general.R0DriftPerH = 1e-300 // too small to change anything, but it leaves the lean loop
-	c, oc := simulate(t, general, 256)
-	if a.Len() != b.Len() || a.Len() != c.Len() || oa.EndS != oc.EndS || oa.Reason != oc.Reason {
-		t.Fatalf("lengths %d, %d, %d; outcomes %+v, %+v", a.Len(), b.Len(), c.Len(), oa, oc)
-	}
-	for k := range a.TimeS {
-		if a.SOC[k] != b.SOC[k] || a.VoltageV[k] != b.VoltageV[k] || a.VoltageBeforeV[k] != b.VoltageBeforeV[k] {
-			t.Fatalf("sample %d depends on the block length", k)
-		}
-		near(t, "soc", k, a.SOC[k], c.SOC[k], 1e-13)
-		near(t, "voltage", k, a.VoltageV[k], c.VoltageV[k], 1e-12)
-		near(t, "before", k, a.VoltageBeforeV[k], c.VoltageBeforeV[k], 1e-12)
-		near(t, "mean", k, a.CurrentMeanA[k], c.CurrentMeanA[k], 1e-12)
+// Whether a scenario takes a loop written out or the general path, and however
+// it is cut into blocks, it is the same scenario. A stop that is never met
+// keeps a duty on the general path.
+func TestFastAndGeneralPathsAgree(t *testing.T) {
+	rich := plain()
+	rich.CoulombicEfficiency = 0.98
+	rich.R0 = cell.Table{SOC: []float64{0, 0.4, 1}, TemperatureC: []float64{0, 25, 45}, Values: [][]float64{{0.08, 0.05, 0.05}, {0.04, 0.024, 0.026}, {0.03, 0.02, 0.022}}}
+	slope := cell.OverSOC([]float64{0, 0.1, 0.5, 1}, []float64{-3e-4, 1e-4, 2e-4, 1e-4})
+	rich.OCVSlopeVPerK = &slope
+	rich.Hysteresis = &cell.Hysteresis{HalfGapV: cell.Constant(0.01), Rate: 40}
+	rich.Thermal = &cell.Thermal{HeatCapacityJPerK: 70, ConductanceWPerK: 0.15}
+	rich.Branches = append(rich.Branches, cell.Branch{Ohm: cell.Constant(0.004), Farad: tab(cell.Constant(900))})
+	for name, c := range map[string]*cell.Cell{"lean": plain(), "rich": rich} {
+		t.Run(name, func(t *testing.T) {
+			legs := func(stop float64) []duty.Leg {
+				out := []duty.Leg{current(4, 600), leg(duty.Rest, 100.5), current(-2, 700), power(9, 50), current(-6, 900), current(9.5, 1500)}
+				for k := range out {
+					out[k].UntilVoltageV = stop
+				}
+				return out
+			}
+			fast := setup(t, c, 1, legs(nan)...)
+			general := setup(t, c, 1, legs(nan)...)
+			stopped := legs(nan)
+			for k := range stopped {
+				stopped[k].UntilSOC = 0 // on discharge at SOC 0, on charge at once: so only where it cannot be met
+				if stopped[k].CurrentA < 0 {
+					stopped[k].UntilSOC = 1
+				}
+			}
+			general.Duty = setup(t, c, 1, stopped...).Duty
+			for _, s := range []*plant.Setup{&fast, &general} {
+				s.SOCStart, s.Seed = 0.9, 5
+				if name == "rich" {
+					s.AmbientC, s.TemperatureStartC, s.R0DriftPerH, s.CapacityDriftPerH, s.R0WalkPerSqrtH = 12, 30, 0.3, -0.02, 0.05
+				}
+			}
+			a, oa := simulate(t, fast, 256)
+			b, _ := simulate(t, fast, 7)
+			g, og := simulate(t, general, 256)
+			if a.Len() != b.Len() || a.Len() != g.Len() || oa.EndS != og.EndS || oa.Reason != og.Reason || math.Abs(oa.HeatJ-og.HeatJ) > 1e-8*(1+math.Abs(og.HeatJ)) {
+				t.Fatalf("lengths %d, %d, %d; outcomes %+v, %+v", a.Len(), b.Len(), g.Len(), oa, og)
+			}
+			for k := range a.TimeS {
+				if a.SOC[k] != b.SOC[k] || a.VoltageV[k] != b.VoltageV[k] || a.VoltageBeforeV[k] != b.VoltageBeforeV[k] || a.TemperatureC[k] != b.TemperatureC[k] {
+					t.Fatalf("sample %d depends on the block length", k)
+				}
+				near(t, "soc", k, a.SOC[k], g.SOC[k], 1e-13)
+				near(t, "current", k, a.CurrentA[k], g.CurrentA[k], 1e-9)
+				near(t, "voltage", k, a.VoltageV[k], g.VoltageV[k], 1e-11)
+				near(t, "before", k, a.VoltageBeforeV[k], g.VoltageBeforeV[k], 1e-11)
+				near(t, "mean", k, a.CurrentMeanA[k], g.CurrentMeanA[k], 1e-9)
+				near(t, "temperature", k, a.TemperatureC[k], g.TemperatureC[k], 1e-10)
+			}
+		})
 	}
 }
 

@@ -43,7 +43,7 @@ func StepHysteresis(h, currentA, rate, moved float64) float64 {
 		return h
 	}
 	sign := math.Copysign(1, currentA)
-	return -sign + (h+sign)*math.Exp(-math.Abs(rate*moved))
+	return -sign + (h+sign)*Exp(-math.Abs(rate*moved))
 }
 
 // Rest returns the terminal voltage of s without its series drop, V: OCV plus
