@@ -30,7 +30,7 @@ type spacing struct {
 }
 
 func (c *channel) reset(seed uint64, set Channel, names *channelStreams) {
-	*c = channel{set: set, gain: 1 + set.GainError}
+	*c = channel{set: set, gain: 1 + set.GainError, stuck: c.stuck, dropout: c.dropout}
 	c.plain = set.WalkPerSqrtS == 0 && set.OffsetPerK == 0 && set.Range == 0
 	c.ideal = c.plain && set.GainError == 0 && set.Offset == 0 && set.Noise == 0 && set.Quantum == 0
 	if set.Noise > 0 {
@@ -72,10 +72,10 @@ func (c *channel) read(in, aboveRefK, out, work []float64, dt spacing) {
 		c.readLinks(in, aboveRefK, out, work, dt)
 	}
 	if c.set.StuckShare > 0 {
-		c.stick(out, work, dt)
+		c.stick(out, dt)
 	}
 	if c.set.DropoutShare > 0 {
-		c.drop(out, work, dt)
+		c.drop(out, dt)
 	}
 	if c.set.Every > 1 {
 		c.thin(out)
@@ -148,32 +148,40 @@ func (c *channel) addWalk(out, work []float64, dt spacing) {
 
 // stick repeats the last good reading while the channel is stuck. Between the
 // readings of a channel that makes fewer, nothing is held.
-func (c *channel) stick(out, marks []float64, dt spacing) {
-	c.stuck.mark(marks, dt)
-	good, haveGood := c.good, c.haveGood
-	every, phase := max(c.set.Every, 1), c.phase
-	for k, v := range out {
-		reads := phase == 0
-		if reads {
-			phase = every
+func (c *channel) stick(out []float64, dt spacing) {
+	every := max(c.set.Every, 1)
+	reads := func(k int) bool { return (k-c.phase)%every == 0 && out[k] == out[k] }
+	from := 0
+	for _, r := range c.stuck.runs(len(out), dt) {
+		c.remember(out, from, r.from, reads)
+		for k := r.from; k < r.to; k++ {
+			switch {
+			case !reads(k):
+			case c.haveGood:
+				out[k] = c.good
+			default:
+				c.good, c.haveGood = out[k], true
+			}
 		}
-		phase--
-		switch {
-		case !reads || math.IsNaN(v):
-		case marks[k] != 0 && haveGood:
-			out[k] = good
-		default:
-			good, haveGood = v, true
+		from = r.to
+	}
+	c.remember(out, from, len(out), reads)
+}
+
+// remember keeps the last reading of a stretch in which nothing is stuck.
+func (c *channel) remember(out []float64, from, to int, reads func(int) bool) {
+	for k := to - 1; k >= from; k-- {
+		if reads(k) {
+			c.good, c.haveGood = out[k], true
+			return
 		}
 	}
-	c.good, c.haveGood = good, haveGood
 }
 
 // drop loses readings while the channel drops out.
-func (c *channel) drop(out, marks []float64, dt spacing) {
-	c.dropout.mark(marks, dt)
-	for k, on := range marks {
-		if on != 0 {
+func (c *channel) drop(out []float64, dt spacing) {
+	for _, r := range c.dropout.runs(len(out), dt) {
+		for k := r.from; k < r.to; k++ {
 			out[k] = math.NaN()
 		}
 	}

@@ -8,7 +8,7 @@
 //
 // since an offset ahead of a quantiser is a different sensor from a quantiser
 // ahead of an offset. T is the true cell temperature at t. Each random link of
-// each channel draws from its own named stream, one draw a sample whatever the
+// each channel draws from its own named stream, whatever the
 // other links do, so that adding or removing one fault moves no other's
 // numbers. How a run is cut into blocks moves nothing either.
 //

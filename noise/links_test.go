@@ -152,16 +152,22 @@ func TestStuckThenDropout(t *testing.T) {
 		plain, stuckV, lostV, bothV := read(free), read(stuck), read(lost), read(both)
 
 		src := stream.New(9, "voltage.stuck")
-		on, last := false, math.NaN()
+		last := math.NaN()
+		on := src.Float64() < 0.3
+		trials := -1 // until the state turns, the sample it turned at not counted
 		for k := range plain {
-			u := src.Float64()
-			switch { // share 0.3, mean 5 samples: ends 1 in 5, begins 0.2·0.3/0.7
-			case k == 0:
-				on = u < 0.3
-			case on:
-				on = !(u < 0.2)
-			default:
-				on = u < 0.2*0.3/0.7
+			odds := 0.2 * 0.3 / 0.7 // share 0.3, mean 5 samples: ends 1 in 5, begins 0.2·0.3/0.7
+			if on {
+				odds = 0.2
+			}
+			if trials < 0 { // failures before the first success, by inversion
+				trials = int(math.Log(1-src.Float64()) / math.Log(1-odds))
+			} else if trials--; trials < 0 {
+				on = !on
+				if odds = 0.2 * 0.3 / 0.7; on {
+					odds = 0.2
+				}
+				trials = int(math.Log(1-src.Float64()) / math.Log(1-odds))
 			}
 			want := plain[k]
 			if k%every == 0 {

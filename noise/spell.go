@@ -1,6 +1,10 @@
 package noise
 
-import "soctrial/plant/stream"
+import (
+	"math"
+
+	"soctrial/plant/stream"
+)
 
 // spell is a fault that comes and goes: a Markov chain of two states, one step
 // a sample. A spell ends at a step of dt with probability dt/mean, so spells
@@ -15,10 +19,16 @@ type spell struct {
 	src          stream.Source
 	share, meanS float64
 	on, begun    bool
+	needed       float64 // of hazard before the state turns, in uneven samples …
+	left         int     // … and samples before it does, in even ones
+	found        []run
 }
 
+// run is a stretch of a block, to excluded.
+type run struct{ from, to int }
+
 func (p *spell) reset(seed uint64, name string, share, meanS float64) {
-	*p = spell{share: share, meanS: meanS}
+	*p = spell{share: share, meanS: meanS, found: p.found[:0]}
 	if share > 0 {
 		p.src = stream.New(seed, name)
 	}
@@ -30,36 +40,74 @@ func (p *spell) odds(dtS float64) (begin, end float64) {
 	return end * p.share / (1 - p.share), end
 }
 
-// mark moves on by a block and writes to marks 1 where the fault is on, else 0.
-// It spends one uniform number a sample.
-func (p *spell) mark(marks []float64, dt spacing) {
-	p.src.Float64s(marks)
-	on, from := p.on, 0
-	if !p.begun && len(marks) > 0 {
-		p.begun, from = true, 1
-		on = marks[0] < p.share
-		marks[0] = one(on)
+// runs moves on by a block of n samples and returns where in it the fault is
+// on. Even samples cost a number a turn, uneven ones a number each.
+func (p *spell) runs(n int, dt spacing) []run {
+	p.found = p.found[:0]
+	if n == 0 {
+		return p.found
 	}
 	begin, end := p.odds(dt.periodS)
-	for k := from; k < len(marks); k++ {
-		if dt.dtS != nil {
-			begin, end = p.odds(dt.dtS[k])
-		}
-		turn := begin
-		if on {
-			turn = end
-		}
-		if marks[k] < turn {
-			on = !on
-		}
-		marks[k] = one(on)
+	first := !p.begun
+	if first {
+		p.begun = true
+		p.on = p.src.Float64() < p.share
+		p.stay(begin, end)
 	}
-	p.on = on
+	if dt.dtS != nil {
+		p.uneven(n, dt.dtS, first)
+		return p.found
+	}
+	for k := 0; k < n; {
+		to := min(n, k+p.left)
+		p.add(k, to)
+		p.left -= to - k
+		k = to
+		if p.left == 0 {
+			p.on = !p.on
+			p.stay(begin, end)
+		}
+	}
+	return p.found
 }
 
-func one(on bool) float64 {
-	if on {
-		return 1
+// add notes the stretch where the fault is on, joined to one just before.
+func (p *spell) add(from, to int) {
+	if !p.on || to == from {
+		return
 	}
-	return 0
+	if n := len(p.found); n > 0 && p.found[n-1].to == from {
+		p.found[n-1].to = to
+		return
+	}
+	p.found = append(p.found, run{from, to})
+}
+
+// stay draws how long the state stays as it is: the state turns where the sum
+// of -ln(1-odds) over the samples passes an exponential number, which for even
+// samples is after the number of trials to the first success.
+func (p *spell) stay(begin, end float64) {
+	p.needed = -math.Log1p(-p.src.Float64())
+	p.left = 1 + int(min(math.Floor(p.needed/p.hazard(begin, end)), 1e15))
+}
+
+// hazard is what a step of these odds takes off what is needed.
+func (p *spell) hazard(begin, end float64) float64 {
+	if p.on {
+		return -math.Log1p(-end)
+	}
+	return -math.Log1p(-begin)
+}
+
+func (p *spell) uneven(n int, dtS []float64, first bool) {
+	for k := range n {
+		if k > 0 || !first {
+			begin, end := p.odds(dtS[k])
+			if p.needed -= p.hazard(begin, end); p.needed < 0 {
+				p.on = !p.on
+				p.stay(begin, end)
+			}
+		}
+		p.add(k, k+1)
+	}
 }
