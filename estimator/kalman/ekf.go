@@ -8,8 +8,8 @@
 // g = P Hᵀ (Bar-Shalom, Li, Kirubarajan 2001, section 5.2).
 //
 // Block by block the filter picks a kernel: one written out for one, two or
-// three branches of fixed time constants at one temperature, or the general
-// step, which is the same algebra over arrays and does everything else.
+// three branches of fixed time constants at one temperature, one for two
+// branches with hysteresis or tables over temperature, or the general step, which is the same algebra over arrays and does everything else.
 //
 // The package never limits the state of charge inside the filter; only the
 // reported one is. Derivatives of branch resistances and time constants over
@@ -139,17 +139,22 @@ func (f *EKF) Advance(in *record.Readings, out *estimator.Estimate) error {
 		return f.lost
 	}
 	n := in.Len()
-	plain := in.PeriodS > 0 && f.n >= 1 && f.n <= 3 && f.model.AllTauFixed && !f.model.Hysteretic && !f.model.TemperatureMatters()
+	even := in.PeriodS > 0 && f.model.AllTauFixed
+	rich := f.model.Hysteretic || f.model.TemperatureMatters()
+	plain := even && !rich && f.n >= 1 && f.n <= 3
+	rich2 := even && rich && f.n == 2
 	for k := 0; k < n && f.lost == nil; {
-		if plain && f.samples > 0 {
+		if (plain || rich2) && f.samples > 0 {
 			f.pace(in.PeriodS)
 			var why stop
-			switch f.n {
-			case 1:
+			switch {
+			case rich2:
+				k, why = f.runRich2(in, out, k)
+			case f.n == 1:
 				k, why = f.run1(in, out, k)
-			case 2:
+			case f.n == 2:
 				k, why = f.run2(in, out, k)
-			case 3:
+			default:
 				k, why = f.run3(in, out, k)
 			}
 			if k == n || why == lost {
