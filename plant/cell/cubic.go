@@ -34,6 +34,14 @@ func (q *Cubic) mixed(o *Cubic, w float64) Cubic {
 	return Cubic{q.Y + w*(o.Y-q.Y), q.B + w*(o.B-q.B), q.C + w*(o.C-q.C), q.D + w*(o.D-q.D)}
 }
 
+// mix sets q to a.mixed(b, w).
+func (q *Cubic) mix(a, b *Cubic, w float64) {
+	q.Y = a.Y + w*(b.Y-a.Y)
+	q.B = a.B + w*(b.B-a.B)
+	q.C = a.C + w*(b.C-a.C)
+	q.D = a.D + w*(b.D-a.D)
+}
+
 // curve is one row of a table, as polynomials between its SOC points.
 type curve struct {
 	x     []float64

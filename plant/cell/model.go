@@ -62,6 +62,7 @@ type Model struct {
 	farad  [MaxBranches]bool // Tau holds a capacitance, to be multiplied by R
 	rOverR float64           // R as defined over R as scaled, for R·C
 	temps  []float64         // layers; empty: one layer for every temperature
+	perK   []float64         // one over the distance from a layer to the next
 	layers [][]Segment
 	ocvByT bool
 	back   []Segment // what the layers are cut from
@@ -74,6 +75,7 @@ type Prepared struct {
 	s     surfaces
 	knots []float64
 	temps []float64 // where a table bends over temperature
+	perK  []float64 // one over the distance from one to the next
 	byT   bool      // the OCV depends on temperature
 }
 
@@ -91,6 +93,9 @@ func Prepare(c *Cell) (*Prepared, error) {
 	p.byT = len(p.s.ocv.temps) > 0 || p.s.slope != nil
 	if len(p.temps) < 2 && p.s.slope != nil { // linear in temperature: any two will do
 		p.temps = []float64{c.TemperatureRefC, c.TemperatureRefC + 1}
+	}
+	for k := 1; k < len(p.temps); k++ {
+		p.perK = append(p.perK, 1/(p.temps[k]-p.temps[k-1]))
 	}
 	return p, nil
 }
@@ -226,7 +231,7 @@ func (m *Model) layOut(p *Prepared, keep, fold []int, o Options) {
 	case len(temps) == 0:
 		temps = []float64{p.Cell.TemperatureRefC}
 	default:
-		m.temps = temps
+		m.temps, m.perK = temps, p.perK
 	}
 	n := len(p.knots)
 	if need := len(temps) * (n + 1); cap(m.back) < need {

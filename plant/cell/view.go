@@ -41,7 +41,7 @@ func (v *View) retemper(temperatureC float64) {
 	for v.layer < len(x)-2 && temperatureC >= x[v.layer+1] {
 		v.layer++
 	}
-	v.w = (temperatureC - x[v.layer]) / (x[v.layer+1] - x[v.layer])
+	v.w = (temperatureC - x[v.layer]) * v.m.perK[v.layer]
 	v.mix()
 }
 
@@ -79,18 +79,21 @@ func (v *View) mix() {
 	flat := min(max(v.w, 0), 1)
 	s := &v.mixed
 	s.Lo, s.Hi, s.Ref = a.Lo, a.Hi, a.Ref
-	s.OCV = a.OCV
 	if m.ocvByT {
-		s.OCV = a.OCV.mixed(&b.OCV, v.w)
+		s.OCV.mix(&a.OCV, &b.OCV, v.w)
+	} else {
+		s.OCV = a.OCV
 	}
-	s.R0 = a.R0.mixed(&b.R0, flat)
+	s.R0.mix(&a.R0, &b.R0, flat)
 	for j := range m.N {
-		s.R[j] = a.R[j].mixed(&b.R[j], flat)
+		s.R[j].mix(&a.R[j], &b.R[j], flat)
 		if !m.TauFixed[j] {
-			s.Tau[j] = a.Tau[j].mixed(&b.Tau[j], flat)
+			s.Tau[j].mix(&a.Tau[j], &b.Tau[j], flat)
 		}
 	}
-	s.HalfGapV = a.HalfGapV
+	if m.Hysteretic {
+		s.HalfGapV = a.HalfGapV
+	}
 }
 
 // OCVSlopeVPerK returns dOCV/dT at soc and the view's temperature.
@@ -101,7 +104,7 @@ func (v *View) OCVSlopeVPerK(soc float64) float64 {
 	}
 	t := soc - v.Segment(soc).Ref
 	a, b := &m.layers[v.layer][v.at], &m.layers[v.layer+1][v.at]
-	return (b.OCV.At(t) - a.OCV.At(t)) / (m.temps[v.layer+1] - m.temps[v.layer])
+	return (b.OCV.At(t) - a.OCV.At(t)) * m.perK[v.layer]
 }
 
 // OCV returns the open-circuit voltage at soc, V, and its slope over SOC.
