@@ -32,6 +32,7 @@ type worker struct {
 	chain    noise.Chain
 	truth    plant.Truth
 	readings record.Readings
+	block    Block // the present stretch; fields, so that nothing is allocated a block
 	seats    []seat
 	models   map[modelKey]*cell.Model
 	sinkErr  error
@@ -41,6 +42,7 @@ type worker struct {
 type seat struct {
 	est      estimator.Estimator
 	out      estimator.Estimate
+	view     estimator.Estimate // of out, as long as the block
 	acc      score.Accumulator
 	lost     string
 	used     int // samples of the present block that were estimated
@@ -183,18 +185,17 @@ func (w *worker) follow(ctx context.Context, sink func(Block) error) (reason str
 			return "", false
 		}
 		n := w.plant.Next(&w.truth)
-		truth := w.truth.Slice(0, n)
-		truth.PeriodS = w.truth.PeriodS
-		readings := w.readings.Slice(0, n)
+		truth, readings := &w.block.Truth, &w.block.Readings
+		*truth, *readings = w.truth.Slice(0, n), w.readings.Slice(0, n)
 		if n > 0 {
-			w.chain.Read(&truth, &readings)
+			w.chain.Read(truth, readings)
 			for i := range w.seats {
-				if err := w.advance(&w.seats[i], &truth, &readings); err != nil {
+				if err := w.advance(&w.seats[i], truth, readings); err != nil {
 					return err.Error(), true
 				}
 			}
 			if sink != nil {
-				if err := w.pass(sink, first, truth, readings); err != nil {
+				if err := w.pass(sink, first, *truth, *readings); err != nil {
 					w.sinkErr = err
 					return "", false
 				}
@@ -221,8 +222,12 @@ func (w *worker) advance(s *seat, truth *plant.Truth, readings *record.Readings)
 		return err
 	}
 	if s.used > 0 {
-		t, e := truth.Slice(0, s.used), s.out.Slice(0, s.used)
-		s.acc.Add(&t, &e)
+		s.view = s.out.Slice(0, s.used)
+		if s.used < truth.Len() {
+			t := truth.Slice(0, s.used)
+			truth = &t
+		}
+		s.acc.Add(truth, &s.view)
 	}
 	return nil
 }
@@ -235,12 +240,12 @@ func (s *seat) follow(readings *record.Readings, nanotime func() int64) error {
 		return nil
 	}
 	n := readings.Len()
-	out := s.out.Slice(0, n)
+	s.view = s.out.Slice(0, n)
 	var began int64
 	if nanotime != nil {
 		began = nanotime()
 	}
-	err := s.est.Advance(readings, &out)
+	err := s.est.Advance(readings, &s.view)
 	if nanotime != nil {
 		s.cost.Nanos += nanotime() - began
 	}
