@@ -27,7 +27,7 @@ Obvious headings and units are recognised and told; others need a --map.
 
 ` + caution,
 		Example: `  # what the filters make of the quay sweeper's Monday round
-  soctrial replay monday.csv --cell pack.toml -e ekf.toml -e coulomb.toml -o monday
+  soctrial replay monday.csv --cell pack.toml -e ekf.toml -o monday
 
   # started in the middle, ten percent wrong, with a current sensor that is off
   soctrial replay monday.csv --cell pack.toml -e ekf.toml -o wrong \
@@ -56,11 +56,11 @@ Obvious headings and units are recognised and told; others need a --map.
 	f.StringVar(&o.MapPath, "map", "", "how the record's columns read")
 	f.BoolVar(&o.ChargePositive, "charge-positive", false, "the record counts charging as positive")
 	f.BoolVar(&o.Repair, "repair", false, "leave samples out whose time runs backward")
-	f.Float64Var(&o.SOCStart, "soc-start", math.NaN(), "SOC at the record's first sample")
+	f.Float64Var(&o.SOCStart, "soc-start", math.NaN(), "SOC at the first sample")
 	f.Float64Var(&o.SOCStartError, "soc-start-error", 0, "told minus true SOC at the start")
-	f.Float64Var(&o.FromS, "from-s", math.NaN(), "begin at this time of the record, s")
-	f.Float64Var(&o.ReferenceCapacityAh, "reference-capacity-ah", math.NaN(), "capacity behind the reference SOC, Ah; else the cell's")
-	f.StringVar(&o.SensorsPath, "sensors", "", "sensors whose faults are put on the readings")
+	f.Float64Var(&o.FromS, "from-s", math.NaN(), "begin at this time, s")
+	f.Float64Var(&o.ReferenceCapacityAh, "reference-capacity-ah", math.NaN(), "behind the reference SOC; else the cell's")
+	f.StringVar(&o.SensorsPath, "sensors", "", "sensors whose faults are added")
 	f.Uint64Var(&o.Seed, "seed", 1, "of those faults")
 	f.StringVar(&o.PlanPath, "plan", "", "a plan whose [score] and [[limit]] rule")
 	f.StringVar(&o.Traces, "traces", "all", "all or none")
@@ -71,7 +71,7 @@ Obvious headings and units are recognised and told; others need a --map.
 		cmd.MarkFlagRequired(name)
 	}
 	for _, name := range []string{"soc-start", "from-s", "reference-capacity-ah"} {
-		f.Lookup(name).DefValue = "" // not NaN, which means nothing to a reader
+		f.Lookup(name).DefValue = "0" // so that none is told: not NaN, which means nothing to a reader
 	}
 	return cmd
 }

@@ -36,7 +36,8 @@ call is wrong, 3 the tool failed, 130 interrupted.
   soctrial run aged.parquet -e ekf.toml -e coulomb.toml -o aged
 
   # traces of the five worst scenarios, and tonight's limits
-  soctrial run aged.parquet -e ekf.toml -o aged --traces worst:5 --plan nightly.toml`,
+  soctrial run aged.parquet -e ekf.toml -o aged --traces worst:5 \
+    --plan nightly.toml`,
 		Args: cobra.ExactArgs(1),
 		RunE: func(cmd *cobra.Command, args []string) error {
 			o.SetPath = args[0]
@@ -65,9 +66,9 @@ call is wrong, 3 the tool failed, 130 interrupted.
 	f := cmd.Flags()
 	f.StringArrayVarP(&o.EstimatorPaths, "estimator", "e", nil, "an estimator's file; may repeat (required)")
 	f.StringVarP(&o.OutDir, "output", "o", "", "the results' folder (required)")
-	f.StringVar(&o.PlanPath, "plan", "", "a plan whose [score] and [[limit]] replace the set's")
+	f.StringVar(&o.PlanPath, "plan", "", "a plan whose [score] and [[limit]] rule")
 	f.IntVar(&o.Workers, "workers", 0, "scenarios at once; 0: as many as processors")
-	f.StringVar(&o.Traces, "traces", "none", "none, all, worst:K or scenario ids with commas between")
+	f.StringVar(&o.Traces, "traces", "none", "none, all, worst:K, or ids with commas")
 	f.BoolVar(&o.ThinTraces, "thin-traces", false, "traces in single precision")
 	f.BoolVar(&o.Force, "force", false, "replace the folder if it exists")
 	f.BoolVar(&asJSON, "json", false, "print JSON for programs")

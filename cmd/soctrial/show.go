@@ -16,9 +16,9 @@ func showCommand(s streams) *cobra.Command {
 	cmd := &cobra.Command{
 		Use:   "show FILE",
 		Short: "Say what a file holds",
-		Long: `show reads any file of ours, or a record, and says what it holds: a set's columns
-and their ranges, the table of results, which traces there are, a cell's curves,
-a duty's legs, what a record spans. A results folder shows its results.
+		Long: `show reads any file of ours, or a record, and says what it holds: a set's
+columns and their ranges, the table of results, which traces there are, a cell's
+curves, a duty's legs, what a record spans. A results folder shows its results.
 
 --picture draws it too, where there is something to draw.`,
 		Example: `  soctrial show quay-sweeper-21.toml --picture cell.png
