@@ -61,7 +61,7 @@ Obvious headings and units are recognised and told; others need a --map.
 	f.Float64Var(&o.FromS, "from-s", math.NaN(), "begin at this time, s")
 	f.Float64Var(&o.ReferenceCapacityAh, "reference-capacity-ah", math.NaN(), "behind the reference SOC; else the cell's")
 	f.StringVar(&o.SensorsPath, "sensors", "", "sensors whose faults are added")
-	f.Uint64Var(&o.Seed, "seed", 1, "of those faults")
+	f.Uint64Var(&o.Seed, "seed", 1, "of the added faults")
 	f.StringVar(&o.PlanPath, "plan", "", "a plan whose [score] and [[limit]] rule")
 	f.StringVar(&o.Traces, "traces", "all", "all or none")
 	f.BoolVar(&o.ThinTraces, "thin-traces", false, "traces in single precision")

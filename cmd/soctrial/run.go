@@ -68,7 +68,7 @@ call is wrong, 3 the tool failed, 130 interrupted.
 	f.StringVarP(&o.OutDir, "output", "o", "", "the results' folder (required)")
 	f.StringVar(&o.PlanPath, "plan", "", "a plan whose [score] and [[limit]] rule")
 	f.IntVar(&o.Workers, "workers", 0, "scenarios at once; 0: as many as processors")
-	f.StringVar(&o.Traces, "traces", "none", "none, all, worst:K, or ids with commas")
+	f.StringVar(&o.Traces, "traces", "none", "none, all, worst:K or ids")
 	f.BoolVar(&o.ThinTraces, "thin-traces", false, "traces in single precision")
 	f.BoolVar(&o.Force, "force", false, "replace the folder if it exists")
 	f.BoolVar(&asJSON, "json", false, "print JSON for programs")
