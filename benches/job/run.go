@@ -89,10 +89,11 @@ func Run(ctx context.Context, o RunOptions) (*Outcome, error) {
 	}
 	defer f.close()
 	if rows == nil {
-		rows = map[int64][]score.Result{}
+		rows = make(map[int64][]score.Result, len(in.set.Rows))
 	}
 	l := &ledger{folder: f, meta: in.meta, total: len(in.set.Rows), perRow: len(in.specs), rows: rows, nextPart: next,
 		partRows: cmp.Or(o.partRows, partRows), now: time.Now, lastWrite: began}
+	l.pending = make([]score.Result, 0, min(l.total*l.perRow, l.partRows+l.perRow))
 	r := &running{o: &o, in: in, ledger: l, began: began, costs: make([]benches.Cost, len(in.specs)), found: len(rows)}
 	if r.found > 0 {
 		o.Report.warn("continuing %s: %d of %d scenarios were finished already", o.OutDir, r.found, l.total)
