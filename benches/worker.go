@@ -208,7 +208,7 @@ func (w *worker) follow(ctx context.Context, sink func(Block) error) (reason str
 	}
 	outcome := w.plant.Outcome()
 	if first == 0 {
-		return fmt.Sprintf("the duty ended before its first sample (%s)", orNothing(outcome.Reason)), true
+		return orNothing(outcome.Reason), true
 	}
 	for i := range w.seats {
 		w.seats[i].acc.SetDuration(outcome.EndS, outcome.LimitedS)

@@ -14,6 +14,7 @@ package plant
 import (
 	"fmt"
 	"math"
+	"slices"
 
 	"soctrial/plant/cell"
 	"soctrial/plant/duty"
@@ -278,8 +279,9 @@ func (p *Plant) finish(reason string) {
 }
 
 func (p *Plant) notice(format string, args ...any) {
-	if len(p.out.Notices) < maxNotices {
-		p.out.Notices = append(p.out.Notices, fmt.Sprintf(format, args...))
+	text := fmt.Sprintf(format, args...)
+	if len(p.out.Notices) < maxNotices && !slices.Contains(p.out.Notices, text) {
+		p.out.Notices = append(p.out.Notices, text)
 	}
 }
 

@@ -107,7 +107,7 @@ func (p *Plant) stopped(currentA, voltageV float64, onCurrent bool) bool {
 			continue
 		}
 		if began {
-			p.notice("leg %d skipped at %g s: its stop was met already", s.Leg, p.tS)
+			p.notice("leg %d skipped: its stop was met already when it began", s.Leg)
 		}
 		p.cur.Leave(s.Depth, p.tS)
 		p.entered()

@@ -35,7 +35,7 @@ func Draw(o DrawOptions) (*scenario.Set, error) {
 		return nil, wrong(err)
 	}
 	if err := scenario.CheckLimits(p.Limits, score.MetricNames()); err != nil {
-		return nil, wrongf("%s: %w", o.PlanPath, err)
+		return nil, wrong(define.At(o.PlanPath, []byte(text), err))
 	}
 	defs, err := loadDefinitions(p, text, filepath.Dir(o.PlanPath))
 	if err != nil {
@@ -43,7 +43,7 @@ func Draw(o DrawOptions) (*scenario.Set, error) {
 	}
 	set, err := scenario.Draw(p, *defs)
 	if err != nil {
-		return nil, wrongf("%s: %w", o.PlanPath, err)
+		return nil, wrong(define.At(o.PlanPath, []byte(text), err))
 	}
 	if err := checkSet(set, &o.Report); err != nil {
 		return nil, wrongf("%s: %w", o.PlanPath, err)

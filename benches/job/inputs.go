@@ -53,9 +53,7 @@ func loadRun(o *RunOptions) (*runInputs, error) {
 	if err != nil {
 		return nil, err
 	}
-	if err := checkLimitEstimators(set.Limits, specs); err != nil {
-		return nil, wrong(err)
-	}
+	warnOfLimits(set.Limits, specs, &o.Report)
 	if err := checkSet(set, &o.Report); err != nil {
 		return nil, wrongf("%s: %w", o.SetPath, err)
 	}
@@ -191,7 +189,9 @@ func checkSpec(s *estimator.Spec, c *cell.Cell, report *Reporter) error {
 	return nil
 }
 
-func checkLimitEstimators(limits []scenario.Limit, specs []estimator.Spec) error {
+// warnOfLimits tells which limits are on estimators that are not run; they
+// come to "cannot tell".
+func warnOfLimits(limits []scenario.Limit, specs []estimator.Spec, report *Reporter) {
 	for i, l := range limits {
 		if l.Estimator == "" || slices.ContainsFunc(specs, func(s estimator.Spec) bool { return s.Name == l.Estimator }) {
 			continue
@@ -200,9 +200,8 @@ func checkLimitEstimators(limits []scenario.Limit, specs []estimator.Spec) error
 		for _, s := range specs {
 			names = append(names, s.Name)
 		}
-		return fmt.Errorf("limit[%d].estimator: found %q, which is not run; allowed is one of %q", i, l.Estimator, names)
+		report.warn("limit[%d].estimator is %q, which is not run (%q are): it cannot be told; --plan gives other limits", i, l.Estimator, names)
 	}
-	return nil
 }
 
 // settingsOf is what rules a run beside its set and estimators, as text.

@@ -17,6 +17,22 @@ type reference struct {
 
 // referenceOf follows SOC over the whole record.
 func referenceOf(r *record.Record, c *cell.Cell, o *ReplayOptions) (reference, error) {
+	ref, err := findReference(r, c, o)
+	if err != nil {
+		return reference{}, err
+	}
+	const slack = 0.02 // the counter of a good tester is off by less
+	for i, z := range ref.soc {
+		if z < -slack || z > 1+slack {
+			o.Report.warn("the reference SOC leaves 0 to 1: it is %.3g at %.6g s; the capacity or the start is wrong, see --reference-capacity-ah and --soc-start",
+				z, r.TimeS[i])
+			break
+		}
+	}
+	return ref, nil
+}
+
+func findReference(r *record.Record, c *cell.Cell, o *ReplayOptions) (reference, error) {
 	start, from, err := startOf(r, c, o)
 	if err != nil {
 		return reference{}, err

@@ -145,9 +145,7 @@ func loadReplay(o *ReplayOptions) (*replayInputs, error) {
 	if err := usePlan(set, o.PlanPath); err != nil {
 		return nil, err
 	}
-	if err := checkLimitEstimators(set.Limits, specs); err != nil {
-		return nil, wrong(err)
-	}
+	warnOfLimits(set.Limits, specs, &o.Report)
 	rec, hash, err := loadRecord(o)
 	if err != nil {
 		return nil, err
@@ -264,12 +262,12 @@ func usePlan(set *scenario.Set, path string) error {
 	if path == "" {
 		return nil
 	}
-	p, _, err := define.ReadPlan(path)
+	p, text, err := define.ReadPlan(path)
 	if err != nil {
 		return wrong(err)
 	}
 	if err := scenario.CheckLimits(p.Limits, score.MetricNames()); err != nil {
-		return wrongf("%s: %w", path, err)
+		return wrong(define.At(path, []byte(text), err))
 	}
 	set.Score, set.Limits = p.Score, p.Limits
 	return nil

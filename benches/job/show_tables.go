@@ -28,7 +28,8 @@ func showSet(o *ShowOptions) (*Shown, error) {
 	s := &Shown{Kind: "set", Name: recordName(o.Path)}
 	s.fact("scenarios", "%d", len(set.Rows))
 	if set.Draw != "" {
-		s.fact("drawn by", "%s, %d draws", set.Draw, max(1, len(distinct(set.Draws()))))
+		draws := set.Draws()
+		s.fact("drawn by", "%s, %s", set.Draw, counted(len(distinct(draws))+len(set.Rows)-len(draws), "draw"))
 	}
 	s.fact("cells", "%s", strings.Join(slices.Sorted(maps.Keys(set.Cells)), ", "))
 	s.fact("duties", "%s", strings.Join(slices.Sorted(maps.Keys(set.Duties)), ", "))
@@ -39,6 +40,39 @@ func showSet(o *ShowOptions) (*Shown, error) {
 	s.columns(set)
 	s.limits(set.Limits)
 	return s, nil
+}
+
+// counted is n of something, in words.
+func counted(n int, of string) string {
+	if n == 1 {
+		return "1 " + of
+	}
+	return fmt.Sprintf("%d %ss", n, of)
+}
+
+// labelsOf returns the set's labels as columns, but for the draws' numbers.
+func labelsOf(set *scenario.Set) []score.Column {
+	var out []score.Column
+	at := map[string]int{}
+	for i := range set.Rows {
+		for _, l := range set.Rows[i].Labels {
+			if l.Column == scenario.LabelPrefix+"draw" {
+				continue
+			}
+			k, seen := at[l.Column]
+			if !seen {
+				k = len(out)
+				at[l.Column] = k
+				out = append(out, score.Column{Name: l.Column})
+			}
+			if l.IsNumber {
+				out[k].Numbers = append(out[k].Numbers, l.Number)
+			} else {
+				out[k].Texts = append(out[k].Texts, l.Text)
+			}
+		}
+	}
+	return out
 }
 
 func distinct(m map[int64]int64) map[int64]bool {
@@ -55,7 +89,7 @@ func (s *Shown) columns(set *scenario.Set) {
 	vary := [][]string{{"column", "least", "median", "most", "values"}}
 	alike := [][]string{{"column", "in every scenario"}}
 	columns, _ := columnsOf(set)
-	for _, c := range columns {
+	for _, c := range append(columns, labelsOf(set)...) {
 		if c.Texts != nil {
 			words := slices.Compact(slices.Sorted(slices.Values(c.Texts)))
 			switch {
@@ -81,11 +115,11 @@ func (s *Shown) columns(set *scenario.Set) {
 			continue
 		}
 		different := len(slices.Compact(slices.Clone(x)))
-		known, _ := scenario.Find(c.Name)
+		known, found := scenario.Find(c.Name)
 		switch {
 		case different > 1 || len(x) < len(c.Numbers):
 			vary = append(vary, []string{c.Name, short3(x[0]), short3(score.Percentile(x, 0.5)), short3(x[len(x)-1]), strconv.Itoa(different)})
-		case known.Default.Null || x[0] != known.Default.Number && known.Kind == scenario.Number || known.Kind == scenario.Int && x[0] != float64(known.Default.Int):
+		case !found || known.Default.Null || x[0] != known.Default.Number && known.Kind == scenario.Number || known.Kind == scenario.Int && x[0] != float64(known.Default.Int):
 			alike = append(alike, []string{c.Name, short3(x[0])})
 		}
 	}

@@ -50,7 +50,7 @@ func (s *Set) Validate() error {
 	for i, l := range s.Limits {
 		if l.Group != "" && !groups[l.Group] {
 			return bad(fmt.Sprintf("limit[%d].group", i), fmt.Sprintf("%q", l.Group),
-				fmt.Sprintf("a group of the set, one of %q", sortedKeys(groups)))
+				groupsAllowed(groups))
 		}
 	}
 	return nil
@@ -110,3 +110,11 @@ func lacking(kind, name string, known []string) error {
 }
 
 func sortedKeys[V any](m map[string]V) []string { return slices.Sorted(maps.Keys(m)) }
+
+func groupsAllowed(groups map[string]bool) string {
+	named := slices.DeleteFunc(sortedKeys(groups), func(g string) bool { return g == "" })
+	if len(named) == 0 {
+		return "none: no scenario of the set has a group (a plan varies the column group)"
+	}
+	return fmt.Sprintf("a group of the set, one of %q", named)
+}

@@ -4,11 +4,12 @@ import "math"
 
 const (
 	binWidth = 5e-5
-	bins     = 20_001 // [0, 1] in steps of binWidth; the last holds 1 and whatever is above
+	bins     = 80_001 // [0, 4] in steps of binWidth; the last holds 4 and whatever is above
 	perUnit  = 20_000
 )
 
-// histogram counts sizes in bins of 5e-5 over [0, 1]. It remembers which bins
+// histogram counts sizes in bins of 5e-5 over [0, 4]: a
+// reference counted over too small a capacity leaves [0, 1]. It remembers which bins
 // were touched, so that clearing it between runs costs what was used.
 type histogram struct {
 	count  [bins]uint32
@@ -23,7 +24,7 @@ func (h *histogram) clear() {
 
 // binOf returns the bin of size ≥ 0.
 func binOf(size float64) int {
-	if size < 1 {
+	if size < 4 {
 		return int(size * perUnit)
 	}
 	return bins - 1
