@@ -64,7 +64,7 @@ func mayWrite(path string, force bool) error {
 	case force:
 		return nil
 	}
-	return wrongf("output %s exists; give another -o, or --force to replace it", path)
+	return wrongf("output %s exists; give another name, or --force to replace it", path)
 }
 
 // loadDefinitions reads the files a plan names, beside it.

@@ -81,6 +81,8 @@ func HonestyOf(results []Result) Honesty {
 		}
 	}
 	h := Honesty{Coverage95: MeanInterval(coverage, 0.95), NIS: MeanInterval(nis, 0.95), NEES: MeanInterval(nees, 0.95)}
+	// A t-interval knows nothing of what a share or a square can be.
+	h.Coverage95, h.NIS, h.NEES = h.Coverage95.within(0, 1), h.NIS.within(0, math.Inf(1)), h.NEES.within(0, math.Inf(1))
 	told, over := false, false
 	for _, f := range []struct {
 		name         string
@@ -115,4 +117,10 @@ func HonestyOf(results []Result) Honesty {
 		h.Verdict = Unknown
 	}
 	return h
+}
+
+// within cuts the interval's ends to what the quantity can be.
+func (i Interval) within(low, high float64) Interval {
+	i.Low, i.High = max(i.Low, low), min(i.High, high)
+	return i
 }
