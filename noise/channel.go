@@ -106,25 +106,34 @@ func (c *channel) readLinks(in, aboveRefK, out, work []float64, dt spacing) {
 			out[k] += perK * t
 		}
 	}
-	if std := c.set.Noise; std > 0 {
+	if c.set.Noise > 0 {
 		c.noise.Normals(work)
-		for k, n := range work {
-			out[k] += std * n
-		}
+		c.convert(out, work)
+		return
 	}
-	if limit := c.set.Range; limit > 0 {
-		for k, v := range out { // a missing value stays missing
-			if v > limit {
-				out[k] = limit
-			} else if v < -limit {
-				out[k] = -limit
-			}
-		}
+	clear(work)
+	c.convert(out, work)
+}
+
+// convert is what the converter makes of out and its noise: saturated, then
+// quantised. A missing value stays missing.
+func (c *channel) convert(out, normal []float64) {
+	std, limit, quantum := c.set.Noise, c.set.Range, c.set.Quantum
+	if limit == 0 {
+		limit = math.Inf(1)
 	}
-	if quantum := c.set.Quantum; quantum > 0 {
-		for k, v := range out {
-			out[k] = math.RoundToEven(v/quantum) * quantum
+	normal = normal[:len(out)]
+	for k, v := range out {
+		v += std * normal[k]
+		if v > limit {
+			v = limit
+		} else if v < -limit {
+			v = -limit
 		}
+		if quantum > 0 {
+			v = math.RoundToEven(v/quantum) * quantum
+		}
+		out[k] = v
 	}
 }
 

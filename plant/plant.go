@@ -80,6 +80,7 @@ const (
 	legCapS     = 1e7  // a leg without duration that meets no stop by then ends the duty
 	voltageTolV = 1e-9 // a held limit is not a broken one
 	kelvin      = 273.15
+	hPerS       = 1.0 / 3600
 )
 
 // Plant is a running cell.
@@ -89,6 +90,9 @@ type Plant struct {
 	view  cell.View
 	cur   duty.Cursor
 	walk  stream.Source
+
+	walkBefore stream.Source // as it was before a block of draws
+	steps      []float64     // those draws
 
 	state cell.State
 	tempC float64
@@ -145,7 +149,7 @@ func (p *Plant) Reset(s Setup) error {
 	if err := s.Cell.ModelInto(m, o); err != nil {
 		return fmt.Errorf("plant: %w", err)
 	}
-	*p = Plant{set: s, model: m, cur: s.Duty.Start(), fresh: noFresh, r0Factor: 1, walkFactor: 1}
+	*p = Plant{set: s, model: m, steps: p.steps, cur: s.Duty.Start(), fresh: noFresh, r0Factor: 1, walkFactor: 1}
 	p.capacityAh = m.CapacityAh * s.CapacityScale
 	p.state.SOC, p.state.Hysteresis = s.SOCStart, s.HysteresisStart
 	copy(p.state.BranchV[:m.N], s.BranchStartV)
@@ -287,7 +291,7 @@ func (p *Plant) notice(format string, args ...any) {
 
 // refresh works out what drifts with time.
 func (p *Plant) refresh() {
-	h := p.tS / 3600
+	h := p.tS * hPerS
 	p.r0Factor = p.walkFactor * (1 + p.set.R0DriftPerH*h)
 	p.capacityAh = p.model.CapacityAh * p.set.CapacityScale * (1 + p.set.CapacityDriftPerH*h)
 	if p.capacityAh <= 0 || p.r0Factor < 0 {

@@ -16,6 +16,12 @@ func (p *Plant) richSamples(out *Truth, n, count int) int {
 	drifts := set.R0DriftPerH != 0 || set.CapacityDriftPerH != 0 || set.R0WalkPerSqrtH > 0
 	vMax, vMin := c.VoltageMaxV+voltageTolV, c.VoltageMinV-voltageTolV
 	walkStd := set.R0WalkPerSqrtH * math.Sqrt(period/3600)
+	perAh := period / 3600
+	perA := perAh / p.capacityAh
+	perW := 0.0
+	if th != nil && th.ConductanceWPerK > 0 {
+		perW = 1 / th.ConductanceWPerK
+	}
 	x := &p.state
 	cur := out.CurrentA[n:][:count]
 	timeS, soc, temp := out.TimeS[n:][:count], out.SOC[n:][:count], out.TemperatureC[n:][:count]
@@ -24,6 +30,7 @@ func (p *Plant) richSamples(out *Truth, n, count int) int {
 	if p.k == 0 {
 		p.iA, p.meanA = cur[0], cur[0]
 	}
+	steps := p.drawWalk(count)
 	j := 0
 	for ; j < len(cur); j++ {
 		i := cur[j]
@@ -38,20 +45,20 @@ func (p *Plant) richSamples(out *Truth, n, count int) int {
 			u -= x.BranchV[b]
 		}
 		before := u - p.iA*r0*p.r0Factor
-		factor, walk, walked := p.r0Factor, p.walk, p.walkFactor
+		factor, walked := p.r0Factor, p.walkFactor
 		if walkStd > 0 && p.k > 0 {
-			walked *= cell.Exp(walkStd * walk.Normal())
-			factor = walked * (1 + set.R0DriftPerH*(p.tS/3600))
+			walked *= cell.Exp(walkStd * steps[j])
+			factor = walked * (1 + set.R0DriftPerH*(p.tS*hPerS))
 		}
 		v := u - i*r0*factor
-		moved := i * period / (3600 * p.capacityAh)
+		moved := i * perA
 		if i < 0 {
 			moved *= m.Efficiency
 		}
 		if i > 0 && !(x.SOC > 0 && v >= vMin) || i < 0 && !(x.SOC-moved <= 1 && x.SOC < 1 && v <= vMax) || x.SOC != x.SOC {
 			break
 		}
-		p.r0Factor, p.walk, p.walkFactor = factor, walk, walked
+		p.r0Factor, p.walkFactor = factor, walked
 		timeS[j], soc[j], temp[j] = p.tS, x.SOC, p.tempC
 		volt[j], voltB[j] = v, before
 		curB[j], meanA[j] = p.iA, p.meanA
@@ -63,7 +70,7 @@ func (p *Plant) richSamples(out *Truth, n, count int) int {
 			if th.ConductanceWPerK == 0 {
 				tempC += q * period / th.HeatCapacityJPerK
 			} else {
-				settled := set.AmbientC + q/th.ConductanceWPerK
+				settled := set.AmbientC + q*perW
 				tempC = settled + (tempC-settled)*p.heatRise
 			}
 		}
@@ -90,9 +97,45 @@ func (p *Plant) richSamples(out *Truth, n, count int) int {
 				j++
 				break
 			}
+			perA = perAh / p.capacityAh
 		}
 	}
+	p.drewWalk(count, j)
 	p.limited, p.holding = false, false
 	p.out.Samples = p.k
 	return j
+}
+
+// drawWalk returns the numbers R0 walks by at the next count samples, in step
+// with a draw at every sample but the run's first.
+func (p *Plant) drawWalk(count int) []float64 {
+	if p.set.R0WalkPerSqrtH == 0 {
+		return nil
+	}
+	if cap(p.steps) < count {
+		p.steps = make([]float64, max(count, 256))
+	}
+	steps := p.steps[:count]
+	p.walkBefore = p.walk
+	first := 0
+	if p.k == 0 {
+		first = 1
+	}
+	p.walk.Normals(steps[first:])
+	return steps
+}
+
+// drewWalk takes back the draws of samples that were not given.
+func (p *Plant) drewWalk(count, used int) {
+	if p.set.R0WalkPerSqrtH == 0 || used == count {
+		return
+	}
+	p.walk = p.walkBefore
+	first := 0
+	if p.k == int64(used) { // they were the run's first
+		first = 1
+	}
+	if used > first {
+		p.walk.Normals(p.steps[:used-first])
+	}
 }

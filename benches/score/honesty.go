@@ -121,6 +121,9 @@ func HonestyOf(results []Result) Honesty {
 
 // within cuts the interval's ends to what the quantity can be.
 func (i Interval) within(low, high float64) Interval {
+	if i.N < 2 {
+		return i
+	}
 	i.Low, i.High = max(i.Low, low), min(i.High, high)
 	return i
 }
