@@ -88,7 +88,13 @@ func (f *EKF) runRich2(in *record.Readings, out *estimator.Estimate, k int) (nex
 			why = lost
 			break
 		}
-		soc[j] = min(max(z, 0), 1)
+		limited := z
+		if limited > 1 {
+			limited = 1
+		} else if limited < 0 {
+			limited = 0
+		}
+		soc[j] = limited
 		free[j] = z
 		std[j] = math.Sqrt(p00)
 		pred[j] = predicted
